@@ -1,0 +1,1 @@
+"""Files, stores, grids and configuration: everything between the disk and the arrays."""

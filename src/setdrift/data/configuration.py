@@ -1,0 +1,333 @@
+"""The configuration of an analysis: one small YAML file, checked before anything runs."""
+
+from __future__ import annotations
+
+import datetime as dt
+import difflib
+import os
+from pathlib import Path
+from typing import Annotated, Any, Literal
+
+import yaml
+from pydantic import BaseModel, ConfigDict, Field, ValidationError, field_validator, model_validator
+
+from setdrift.errors import SetdriftError
+
+Positive = Annotated[float, Field(gt=0)]
+NotNegative = Annotated[float, Field(ge=0)]
+Name = Annotated[str, Field(pattern=r"^[a-z][a-z0-9_]*$", max_length=40)]
+
+
+class Section(BaseModel):
+    """A part of the configuration: unknown keys are refused, values never change."""
+
+    model_config = ConfigDict(extra="forbid", frozen=True, allow_inf_nan=False)
+
+
+class Period(Section):
+    """Days to analyse, both ends included."""
+
+    start: dt.date
+    end: dt.date | Literal["latest"] = Field(description="a date, or 'latest': the newest day with observations")
+
+    @model_validator(mode="after")
+    def _in_order(self) -> Period:
+        if self.end != "latest" and self.end < self.start:
+            raise ValueError(f"start ({self.start}) must not be after end ({self.end})")
+        return self
+
+
+class GridBox(Section):
+    """The box and its spacing in degrees; grid points are the centres of its cells."""
+
+    west: float = Field(ge=-360, le=360)
+    east: float = Field(ge=-360, le=360)
+    south: float = Field(ge=-90, le=90)
+    north: float = Field(ge=-90, le=90)
+    spacing: float = Field(gt=0, le=2)
+
+    @model_validator(mode="after")
+    def _sound(self) -> GridBox:
+        if self.south >= self.north:
+            raise ValueError(f"south ({self.south}) must be below north ({self.north})")
+        for low, high, extent in (("west", "east", self.width), ("south", "north", self.north - self.south)):
+            cells = extent / self.spacing
+            if abs(cells - round(cells)) > 1e-6 * max(cells, 1.0) or round(cells) < 4:
+                raise ValueError(
+                    f"spacing ({self.spacing}) must divide {low} to {high} ({extent:g} degrees) "
+                    "into a whole number of cells, at least 4"
+                )
+        return self
+
+    @property
+    def width(self) -> float:
+        """Eastward extent in degrees, 360 for a global box."""
+        width = (self.east - self.west) % 360.0
+        return width if width > 0 else 360.0
+
+    @property
+    def periodic(self) -> bool:
+        """Whether the box goes once round the globe."""
+        return self.width == 360.0
+
+
+class VariableNames(Section):
+    """Names of variables in files that carry no CF standard names; those left out are found by standard name."""
+
+    time: str | None = None
+    latitude: str | None = None
+    longitude: str | None = None
+    sea_level_anomaly: str | None = None
+    pass_number: str | None = None
+    cycle_number: str | None = None
+
+
+class GoodValues(Section):
+    """Which observations are good: the flag's value is one of `values`, or its masked bits equal `equals`."""
+
+    variable: str
+    values: tuple[int, ...] | None = None
+    mask: int | None = None
+    equals: int = 0
+
+    @model_validator(mode="after")
+    def _one_rule(self) -> GoodValues:
+        if (self.values is None) == (self.mask is None):
+            raise ValueError("give either values (a list of good flag values) or mask (with equals)")
+        return self
+
+
+class Altimeter(Section):
+    """One altimeter's files and how to read them."""
+
+    files: str = Field(description="glob of along-track files, relative to the configuration file")
+    variables: VariableNames = VariableNames()
+    subtract: tuple[str, ...] = Field(default=(), description="correction variables to subtract from the sea level")
+    add: tuple[str, ...] = Field(default=(), description="correction variables to add to the sea level")
+    good: GoodValues | None = None
+    noise_m: Positive = Field(default=0.03, le=1.0, description="white-noise standard deviation of one observation")
+
+
+class Source(Section):
+    """A gridded input file, and the variable in it where standard names do not tell."""
+
+    file: str
+    variable: str | None = None
+
+
+class Editing(Section):
+    """Limits of the tests that set observations aside."""
+
+    largest_anomaly_m: Positive = Field(default=2.0, description="gross limit of the anomaly's magnitude")
+    spike_window: int = Field(default=9, ge=5, le=101, description="points of the running median")
+    spike_limit: Positive = Field(default=5.0, description="robust standard deviations from the running median")
+    spike_floor_m: Positive = Field(default=0.10, description="departures below this are never spikes")
+    pass_gap_s: Positive = Field(default=300.0, description="a longer gap in time starts a new pass")
+
+
+class Mapping(Section):
+    """The covariance of sea level, its errors, and the window of the mapping."""
+
+    window_days: int = Field(
+        default=15, ge=1, le=60, description="observations up to so many days either side are used"
+    )
+    signal_m: Positive = Field(default=0.10, le=2.0, description="prior standard deviation of the sea level anomaly")
+    zonal_scale_km: Positive | None = Field(
+        default=None, description="zero crossing of the covariance; left out: by latitude"
+    )
+    meridional_scale_km: Positive | None = Field(default=None, description="as zonal_scale_km, northward")
+    time_scale_days: Positive = Field(default=15.0, description="e-folding time of the covariance")
+    zonal_drift_km_per_day: float | None = Field(
+        default=None, description="eastward drift of sea level patterns; left out: by latitude"
+    )
+    long_wave_m: NotNegative = Field(default=0.02, description="standard deviation of the error shared along a pass")
+    bias_m: NotNegative = Field(default=0.03, description="standard deviation of the bias between altimeters")
+
+
+class Currents(Section):
+    """Latitudes, in degrees, of the equatorial band."""
+
+    band_degrees: Positive = Field(default=6.0, le=10, description="the equatorial fit uses sea level up to here")
+    blend_from_degrees: Positive = Field(default=3.0, description="pure beta-plane balance up to here")
+    blend_to_degrees: Positive = Field(default=5.0, description="pure f-plane balance from here")
+
+    @model_validator(mode="after")
+    def _in_order(self) -> Currents:
+        if not self.blend_from_degrees < self.blend_to_degrees <= self.band_degrees:
+            raise ValueError(
+                f"blend_from_degrees ({self.blend_from_degrees}) must be below blend_to_degrees "
+                f"({self.blend_to_degrees}), and that not above band_degrees ({self.band_degrees})"
+            )
+        return self
+
+
+class Eddies(Section):
+    """What counts as an eddy and how detections are linked from day to day."""
+
+    field: Literal["sea_level_anomaly", "dynamic_topography"] = "sea_level_anomaly"
+    minimum_amplitude_m: Positive = 0.02
+    minimum_prominence_m: Positive = 0.01
+    minimum_radius_km: Positive = 30.0
+    maximum_radius_km: Positive = 300.0
+    maximum_circle_misfit: float = Field(default=0.6, gt=0, le=2)
+    equatorial_exclusion_degrees: float = Field(default=3.0, ge=0, le=90)
+    gate_km: Positive = Field(default=150.0, description="farthest a detection may lie from the predicted position")
+    gap_days: int = Field(default=5, ge=0, le=30, description="days a trajectory may go unseen")
+
+    @model_validator(mode="after")
+    def _in_order(self) -> Eddies:
+        if self.minimum_radius_km >= self.maximum_radius_km:
+            raise ValueError(
+                f"minimum_radius_km ({self.minimum_radius_km}) must be below "
+                f"maximum_radius_km ({self.maximum_radius_km})"
+            )
+        return self
+
+
+class Publish(Section):
+    """How products are written and whose they are."""
+
+    zarr_format: Literal[2, 3] = 3
+    institution: str = "not stated"
+    licence: str = "not stated: ask the institution before use"
+    creator_name: str = "not stated"
+    creator_email: str = "not stated"
+
+
+class Configuration(Section):
+    """The whole configuration of one analysis."""
+
+    analysis: Name = Field(description="names the outputs: lower case letters, digits and underscores")
+    output: str = Field(description="work files and products go below this folder, under the analysis's name")
+    period: Period
+    grid: GridBox
+    altimeters: dict[Name, Altimeter] = Field(min_length=1, max_length=100)
+    mean_dynamic_topography: Source
+    land: Source | None = Field(
+        default=None, description="land mask; left out: land is where the mean dynamic topography is missing"
+    )
+    editing: Editing = Editing()
+    mapping: Mapping = Mapping()
+    currents: Currents = Currents()
+    eddies: Eddies = Eddies()
+    publish: Publish = Publish()
+    block_days: int = Field(default=10, ge=1, le=366, description="days handled by one job")
+
+    _path: Path = Path("configuration.yaml")
+
+    @field_validator("altimeters", mode="after")
+    @classmethod
+    def _ordered(cls, value: dict[str, Altimeter]) -> dict[str, Altimeter]:
+        # the order of keys in the file must not change any result
+        return dict(sorted(value.items()))
+
+    @property
+    def path(self) -> Path:
+        """The file the configuration was read from."""
+        return self._path
+
+    def resolve(self, name: str) -> Path:
+        """Return a path of the configuration, relative ones taken from the file's own folder."""
+        return Path(os.path.normpath(self._path.parent / Path(name).expanduser()))
+
+    @property
+    def work(self) -> Path:
+        """Folder of this analysis's intermediate files."""
+        return self.resolve(self.output) / "work" / self.analysis
+
+    @property
+    def products(self) -> Path:
+        """Folder of this analysis's published products."""
+        return self.resolve(self.output) / "products" / self.analysis
+
+
+def load_configuration(path: str | Path) -> Configuration:
+    """Read and check a configuration file.
+
+    Parameters
+    ----------
+    path : str or Path
+        The YAML file.
+
+    Returns
+    -------
+    Configuration
+        The checked configuration.
+
+    Raises
+    ------
+    SetdriftError
+        The file cannot be read, is not YAML, or a key is unknown, missing or out of range.
+    """
+    path = Path(path)
+    content = _read_yaml(path)
+    try:
+        configuration = Configuration.model_validate(content)
+    except ValidationError as error:
+        where, what, remedy = _explained(path, error)
+        raise SetdriftError(where, what, remedy) from error
+    configuration._path = path.absolute()  # noqa: SLF001 - the loader is the one place that knows the file
+    return configuration
+
+
+def _read_yaml(path: Path) -> dict[str, Any]:
+    try:
+        content = yaml.safe_load(path.read_text(encoding="utf-8"))
+    except (OSError, UnicodeDecodeError) as error:
+        reason = error.strerror if isinstance(error, OSError) else "it is not UTF-8 text"
+        raise SetdriftError(str(path), f"cannot be read ({reason})", "give the path of a configuration file") from error
+    except yaml.YAMLError as error:
+        mark = getattr(error, "problem_mark", None)
+        line = f" at line {mark.line + 1}" if mark else ""
+        raise SetdriftError(str(path), f"is not valid YAML{line}", "mend the indentation or quoting there") from error
+    if not isinstance(content, dict):
+        raise SetdriftError(str(path), "holds no keys", "start from a file in config/")
+    return content
+
+
+def _explained(path: Path, error: ValidationError) -> tuple[str, str, str]:
+    """Turn the validator's first finding into one line with file, key, value and remedy."""
+    problems = error.errors()
+    # an unknown key often explains a missing one, so it is told first
+    first = next((p for p in problems if p["type"] == "extra_forbidden"), problems[0])
+    key = ".".join(str(part) for part in first["loc"] if part not in {"date", "literal['latest']"})
+    more = f" ({len(problems) - 1} more problem(s) in the file)" if len(problems) > 1 else ""
+    where = f"{path}: {key}" if key else str(path)
+    what, remedy = _finding(first)
+    return where, what, remedy + more
+
+
+def _finding(problem: Any) -> tuple[str, str]:
+    kind, value = problem["type"], problem.get("input")
+    if kind == "extra_forbidden":
+        return "is not a known key", _nearest_key(problem["loc"])
+    if kind == "missing":
+        return "is missing", "add it; config/README.md lists every key"
+    message = problem["msg"].removeprefix("Value error, ")
+    if kind == "value_error":
+        return message, "change one of them"
+    shown = repr(value) if len(repr(value)) <= 60 else repr(value)[:57] + "..."
+    return f"{shown} is refused", f"{message[0].lower()}{message[1:]}"
+
+
+def _nearest_key(location: tuple[Any, ...]) -> str:
+    model: Any = Configuration
+    for part in location[:-1]:
+        field = getattr(model, "model_fields", {}).get(part)
+        model = _section_of(field.annotation) if field is not None else model
+    known = list(getattr(model, "model_fields", Configuration.model_fields))
+    near = difflib.get_close_matches(str(location[-1]), known, n=1, cutoff=0.5)
+    if near:
+        return f"did you mean {near[0]}?"
+    return f"known keys here: {', '.join(known)}"
+
+
+def _section_of(annotation: Any) -> Any:
+    """Find the section class inside an annotation such as `dict[str, Altimeter]` or `Source | None`."""
+    if isinstance(annotation, type) and issubclass(annotation, BaseModel):
+        return annotation
+    for argument in getattr(annotation, "__args__", ()):
+        found = _section_of(argument)
+        if found is not None:
+            return found
+    return None

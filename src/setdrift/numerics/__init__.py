@@ -1,0 +1,1 @@
+"""Array mathematics: numpy in, numpy out; nothing here knows files, labels or configuration."""

@@ -1,0 +1,1 @@
+"""One public function per rule of the workflow."""
