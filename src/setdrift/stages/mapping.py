@@ -1,0 +1,135 @@
+"""Daily maps of sea level anomaly from the observations of the days around."""
+
+from __future__ import annotations
+
+import datetime as dt
+from collections.abc import Callable
+from typing import Any
+
+import numpy as np
+import xarray as xr
+
+from setdrift.data.configuration import Configuration
+from setdrift.data.conventions import UNOBSERVED_LIMIT, MapQuality
+from setdrift.data.day_store import DayStore, refresh_days
+from setdrift.data.days import Block, day_number, days_between
+from setdrift.data.digests import digest
+from setdrift.data.fixed import fixed_digest, load_fixed_fields
+from setdrift.data.grids import Grid, working_grid
+from setdrift.data.receipts import analysed_period, contents_between, write_receipt
+from setdrift.numerics.covariance import CovarianceModel
+from setdrift.numerics.optimal_interpolation import MappingSettings, map_sea_level
+from setdrift.numerics.superobservations import SeaLevelObservations
+
+ALGORITHM_VERSION = 1
+"""Raised by hand whenever the stage's results change."""
+
+NOON = 0.5  # maps are snapshots at 12:00 UTC
+
+
+def map_block(configuration: Configuration, block: Block, announce: Callable[[str], None]) -> dict[str, Any]:
+    """Map the days of a block whose observations or settings changed.
+
+    Parameters
+    ----------
+    configuration : Configuration
+        The analysis.
+    block : Block
+        Days handled by this job.
+    announce : callable
+        Told of each day, for the log.
+
+    Returns
+    -------
+    dict
+        The job's receipt.
+    """
+    days = block.days_within(*analysed_period(configuration))
+    window = dt.timedelta(days=configuration.mapping.window_days)
+    observed = contents_between(configuration, "observations", days[0] - window, days[-1] + window)
+    grid = working_grid(configuration)
+    noise = {name: altimeter.noise_m for name, altimeter in configuration.altimeters.items()}
+    common = digest(
+        ALGORITHM_VERSION,
+        configuration.mapping,
+        noise,
+        grid.latitude,
+        grid.longitude,
+        fixed_digest(configuration, "land_fraction"),
+    )
+
+    def made_from(day: dt.date) -> str:
+        return digest(common, [observed[d] for d in days_between(day - window, day + window)])
+
+    mapper = _Mapper(configuration, grid)
+    contents = refresh_days(DayStore(configuration.work / "maps"), days, made_from, mapper.map_day, announce)
+    return write_receipt(configuration, "maps", block, contents)
+
+
+class _Mapper:
+    """Maps days one after another, keeping the observation days that the next one needs."""
+
+    def __init__(self, configuration: Configuration, grid: Grid) -> None:
+        self._configuration = configuration
+        self._grid = grid
+        self._store = DayStore(configuration.work / "observations")
+        self._loaded: dict[dt.date, SeaLevelObservations] = {}
+        self._settings = mapping_settings(configuration)
+        self._sea: np.ndarray[Any, np.dtype[np.bool_]] | None = None
+
+    def map_day(self, day: dt.date) -> xr.Dataset:
+        if self._sea is None:
+            self._sea = (load_fixed_fields(self._configuration)["land_fraction"] < 0.5).values
+        moment = day_number(day) + NOON
+        mapped = map_sea_level(
+            self._window(day), self._grid.latitude, self._grid.longitude, self._sea, moment, self._settings
+        )
+        prior = self._settings.model.standard_deviation
+        unobserved = mapped.error > UNOBSERVED_LIMIT * prior
+        dims = ("latitude", "longitude")
+        return xr.Dataset(
+            {
+                "sea_level_anomaly": (dims, mapped.estimate),
+                "sea_level_anomaly_error": (dims, mapped.error),
+                "observation_count": (dims, mapped.observation_count),
+                "map_quality": (dims, unobserved.astype(np.int8) * np.int8(MapQuality.UNOBSERVED)),
+            },
+            coords={"latitude": self._grid.latitude, "longitude": self._grid.longitude},
+        )
+
+    def _window(self, day: dt.date) -> SeaLevelObservations:
+        window = dt.timedelta(days=self._configuration.mapping.window_days)
+        wanted = days_between(day - window, day + window)
+        self._loaded = {d: self._loaded.get(d) or self._load(d) for d in wanted}
+        return SeaLevelObservations.joined(list(self._loaded.values()))
+
+    def _load(self, day: dt.date) -> SeaLevelObservations:
+        data = self._store.load(day)
+        names = data.attrs["altimeters"].split()
+        noise = np.array([self._configuration.altimeters[name].noise_m for name in names])
+        altimeter = data["altimeter"].values.astype(np.int64)
+        return SeaLevelObservations(
+            data["longitude"].values,
+            data["latitude"].values,
+            data["time"].values / 86400.0,
+            data["sea_level_anomaly"].values,
+            noise[altimeter] ** 2,
+            altimeter,
+            data["pass_number"].values.astype(np.int64),
+            np.ones(altimeter.size, dtype=np.int64),
+        )
+
+
+def mapping_settings(configuration: Configuration) -> MappingSettings:
+    """Return the settings of the mapping from the configuration's."""
+    chosen = configuration.mapping
+    model = CovarianceModel(
+        chosen.signal_m,
+        chosen.time_scale_days,
+        chosen.zonal_scale_km,
+        chosen.meridional_scale_km,
+        chosen.zonal_drift_km_per_day,
+    )
+    return MappingSettings(
+        model, float(chosen.window_days), long_wave_variance=chosen.long_wave_m**2, bias_variance=chosen.bias_m**2
+    )
