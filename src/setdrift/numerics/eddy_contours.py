@@ -38,12 +38,9 @@ def contour_buffers(shape: tuple[int, int]) -> tuple[FloatArray, IntArray]:
 
 
 @njit("i8(UniTuple(f8, 4), i8, f8, f8)", cache=True)
-def exit_side(corners: tuple[float, float, float, float], entry: int, mean: float, level: float) -> Any:
-    """Side by which a contour leaves a cell that it entered by side `entry`, with higher values on its left.
-
-    Corners and sides go anticlockwise from the south-west corner and the southern side; side k runs from corner
-    k to corner k + 1.
-    """
+def _exit_side(corners: tuple[float, float, float, float], entry: int, mean: float, level: float) -> Any:
+    """Side by which a contour leaves a cell that it entered by side `entry`, with higher values on its left."""
+    # corners and sides go anticlockwise from the south-west and the south; side k joins corners k and k + 1
     before = corners[(entry + 3) % 4] > level
     opposite = corners[(entry + 2) % 4] > level
     if before:
@@ -63,11 +60,27 @@ def follow_contour(
     points: FloatArray,
     crossings: IntArray,
 ) -> Any:
-    """Follow the contour that crosses `row` just east of `column`, which is above the level.
+    """Follow the contour that crosses a row just east of a point above the level.
 
-    Fills the buffers and returns how many points and how many crossings of rows; (0, 0) if the contour meets the
-    edge of the grid or a missing value, or goes round a periodic grid. A crossing is coded as
-    ``4 columns row + columns + column``, column being the one west of it.
+    Parameters
+    ----------
+    field : (y, x) array
+        Values; NaN where missing.
+    level : float
+        Value of the contour, in the units of the field.
+    row, column : int
+        The point; the one east of it is not above the level.
+    periodic : bool
+        The last column neighbours the first.
+    points, crossings : array
+        Buffers to fill, see `contour_buffers`. A crossing of a row is coded as
+        ``4 columns row + columns + column``, the column being the one west of it.
+
+    Returns
+    -------
+    n, crossed : int
+        How many points and crossings; both 0 if the contour meets the edge of the grid or a missing value, or
+        goes round a periodic grid.
     """
     rows, columns = field.shape
     j, i, side, crossed = row, column, 0, 0
@@ -90,7 +103,7 @@ def follow_contour(
             crossed += 1
         else:
             points[0, n], points[1, n] = i + (3 - side) // 2, j + part
-        leave = exit_side(corners, side, mean, level)
+        leave = _exit_side(corners, side, mean, level)
         j += (leave == 2) - (leave == 0)
         i += (leave == 1) - (leave == 3)
         side = (leave + 2) % 4
@@ -119,10 +132,19 @@ def outer_contour(
     points: FloatArray,
     crossings: IntArray,
 ) -> Any:
-    """Contour round the whole component of (row, column) above a level, past any dips inside it.
+    """Follow the contour round all that is connected to a point above the level.
 
-    Goes east from the point, which is above the level, and tries each contour met on the way. Fills the buffers
-    and returns the two counts as `follow_contour`; (0, 0) if there is no closed one.
+    Goes east from the point and tries each contour met on the way, for the first may bound a dip inside.
+
+    Parameters
+    ----------
+    field, level, row, column, periodic, points, crossings
+        As in `follow_contour`; the point is above the level.
+
+    Returns
+    -------
+    n, crossed : int
+        As from `follow_contour`; both 0 if there is no closed contour round the point.
     """
     columns = field.shape[1]
     i = column
@@ -140,10 +162,23 @@ def outer_contour(
 
 @njit("i8(f8[:, ::1], i8[::1], f8)", cache=True)
 def count_enclosed(field: FloatArray, crossings: IntArray, floor: float) -> Any:
-    """Grid points inside a closed contour; 0 if one of them is missing or not above `floor`.
+    """Count the grid points inside a closed contour.
 
-    Sorts the crossings: along a row they lead in and out by turns.
+    Parameters
+    ----------
+    field : (y, x) array
+        Values; NaN where missing.
+    crossings : (m,) int array
+        Of the contour, from `follow_contour`; sorted in place.
+    floor : float
+        Value that all points inside must exceed.
+
+    Returns
+    -------
+    int
+        Number of points; 0 if one of them is missing or not above the floor.
     """
+    # along a row the sorted crossings lead in and out by turns
     columns = field.shape[1]
     crossings.sort()
     count = 0

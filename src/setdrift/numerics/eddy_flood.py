@@ -79,14 +79,12 @@ def _surrounded(field: FloatArray, periodic: bool) -> BoolArray:
     present = np.pad(np.isfinite(field), ((1, 1), (0, 0)))
     present = np.pad(present, ((0, 0), (1, 1)), mode="wrap") if periodic else np.pad(present, ((0, 0), (1, 1)))
     zonal = present[:, :-2] & present[:, 1:-1] & present[:, 2:]
-    return zonal[:-2] & zonal[1:-1] & zonal[2:]
+    surrounded: BoolArray = zonal[:-2] & zonal[1:-1] & zonal[2:]
+    return surrounded
 
 
 def _saddle_cells(field: FloatArray, periodic: bool) -> tuple[IntArray, FloatArray]:
-    """Cells with both ends of one diagonal above both ends of the other, and the level that joins that diagonal.
-
-    Returns the corners (n, 4) as flat indices, anticlockwise, and the levels (n,).
-    """
+    """Corners (n, 4) of cells with one diagonal above the other, and the level that joins that diagonal."""
     points = np.arange(field.size).reshape(field.shape)
     if periodic:
         field, points = (np.concatenate([a, a[:, :1]], axis=1) for a in (field, points))

@@ -96,10 +96,26 @@ def project_points(
     radius: float,
     plane: FloatArray,
 ) -> None:
-    """Put the first n fractional (column, row) points on the plane that touches the grid at (row, column).
+    """Put points of a grid on the equal-area plane that touches it at one grid point.
 
-    `latitude` is authalic; both axes in degrees. Fills `plane` (2, m) with eastward and northward metres.
-    Formulas: Snyder (1987), eqs. 22-4, 22-5 and 24-2.
+    Parameters
+    ----------
+    points : (2, m) array
+        Fractional columns and rows.
+    n : int
+        How many of the points to use.
+    latitude, longitude : (y,), (x,) array
+        Authalic latitude and longitude of the grid, degrees.
+    row, column : int
+        The grid point where the plane touches.
+    radius : float
+        Of the authalic sphere, m.
+    plane : (2, m) array
+        Filled with eastward and northward distances, m.
+
+    References
+    ----------
+    Snyder (1987), Map Projections: A Working Manual, eqs. 22-4, 22-5 and 24-2.
     """
     degree = np.pi / 180.0
     sine, cosine = np.sin(degree * latitude[row]), np.cos(degree * latitude[row])
@@ -113,7 +129,7 @@ def project_points(
 
 
 @njit("UniTuple(f8, 3)(f8[:, ::1], i8)", cache=True)
-def area_and_centroid(plane: FloatArray, n: int) -> Any:
+def _area_and_centroid(plane: FloatArray, n: int) -> Any:
     """Signed area, positive anticlockwise, and x and y of the centroid of the polygon of the first n points."""
     x0, y0 = plane[0, 0], plane[1, 0]
     twice, moment_x, moment_y = 0.0, 0.0, 0.0
@@ -154,12 +170,23 @@ def _overlap_with_side(ax: float, ay: float, bx: float, by: float, radius: float
 
 @njit("UniTuple(f8, 2)(f8[:, ::1], i8)", cache=True)
 def area_and_misfit(plane: FloatArray, n: int) -> Any:
-    """Area of a polygon and its misfit to a circle.
+    """Area of a polygon, and its misfit to the circle that has its area and its centroid.
 
-    The circle has the polygon's area and centroid. The misfit is the area that only one of the two covers, over
-    the area of the circle: 0 for a circle, at most 2.
+    Parameters
+    ----------
+    plane : (2, m) array
+        Corners of the polygon, m.
+    n : int
+        How many of the points to use.
+
+    Returns
+    -------
+    area : float
+        m2, positive.
+    misfit : float
+        Area that only one of polygon and circle covers, over the area of the circle: 0 for a circle, at most 2.
     """
-    signed, x, y = area_and_centroid(plane, n)
+    signed, x, y = _area_and_centroid(plane, n)
     area = abs(signed)
     if area == 0.0:
         return 0.0, 2.0

@@ -62,8 +62,8 @@ class Buffers(NamedTuple):
 
 
 _PLANE, _LINE = types.float64[:, ::1], types.float64[::1]
-_BOUNDS = types.NamedTuple([types.float64] * 6, Bounds)
-_BUFFERS = types.NamedTuple([_PLANE, _PLANE, types.int64[::1]], Buffers)
+_BOUNDS = types.NamedUniTuple(types.float64, 6, Bounds)  # type: ignore[no-untyped-call]
+_BUFFERS = types.NamedTuple([_PLANE, _PLANE, types.int64[::1]], Buffers)  # type: ignore[no-untyped-call]
 
 
 @njit(
@@ -72,7 +72,7 @@ _BUFFERS = types.NamedTuple([_PLANE, _PLANE, types.int64[::1]], Buffers)
     ),
     cache=True,
 )  # fmt: skip
-def judge_outline(
+def _judge(
     field: FloatArray,
     longitude: FloatArray,
     authalic_latitude: FloatArray,
@@ -83,10 +83,7 @@ def judge_outline(
     bounds: Bounds,
     buffers: Buffers,
 ) -> Any:
-    """Whether the contour of a level round (row, column) may bound an eddy: FIT, UNFIT or TOO_SMALL.
-
-    Contours further in may be fit where this one is UNFIT, but not where it is TOO_SMALL.
-    """
+    """Whether a contour may bound an eddy: FIT, UNFIT (one further in may) or TOO_SMALL (none may)."""
     n, crossed = outer_contour(field, level, row, column, periodic, buffers.points, buffers.crossings)
     if n == 0:
         return UNFIT
@@ -95,9 +92,7 @@ def judge_outline(
         return UNFIT
     if count < bounds.minimum_cells:
         return TOO_SMALL
-    project_points(
-        buffers.points, n, authalic_latitude, longitude, row, column, bounds.radius, buffers.plane
-    )
+    project_points(buffers.points, n, authalic_latitude, longitude, row, column, bounds.radius, buffers.plane)
     area, misfit = area_and_misfit(buffers.plane, n)
     if area < bounds.minimum_area:
         return TOO_SMALL
@@ -123,17 +118,37 @@ def outermost_level(
     bounds: Bounds,
     buffers: Buffers,
 ) -> Any:
-    """Level of the outermost contour round (row, column) that is fit to bound an eddy; NaN if none is.
+    """Level of the outermost contour round a maximum that is fit to bound an eddy.
 
     Steps inwards from the closing level to the innermost one, and bisects between the first fit level and the
     one outside it.
+
+    Parameters
+    ----------
+    field : (y, x) array
+        m; NaN where there is no data.
+    longitude, authalic_latitude : (x,), (y,) array
+        Degrees.
+    periodic : bool
+        The last column neighbours the first.
+    closing_level, innermost_level : float
+        m; where the search begins and ends.
+    row, column : int
+        Grid point of the maximum.
+    bounds : Bounds
+        What the outline must keep to.
+    buffers : Buffers
+        Room to work in.
+
+    Returns
+    -------
+    float
+        m; NaN if no contour is fit.
     """
     step = (innermost_level - closing_level) / _LEVELS
     for k in range(_LEVELS + 1):
         fit = closing_level + k * step
-        verdict = judge_outline(
-            field, longitude, authalic_latitude, periodic, fit, row, column, bounds, buffers
-        )
+        verdict = _judge(field, longitude, authalic_latitude, periodic, fit, row, column, bounds, buffers)
         if verdict == TOO_SMALL:
             return np.nan
         if verdict == FIT:
@@ -145,9 +160,7 @@ def outermost_level(
     unfit = fit - step
     for _ in range(_BISECTIONS):
         level = 0.5 * (fit + unfit)
-        verdict = judge_outline(
-            field, longitude, authalic_latitude, periodic, level, row, column, bounds, buffers
-        )
+        verdict = _judge(field, longitude, authalic_latitude, periodic, level, row, column, bounds, buffers)
         if verdict == FIT:
             fit = level
         else:

@@ -1,4 +1,4 @@
-"""How fast an eddy turns: circulation along its contours, and the contour that turns fastest."""
+"""How fast an eddy turns: velocity along its contours, and the contour that turns fastest."""
 
 from __future__ import annotations
 
@@ -40,8 +40,8 @@ class Flow(NamedTuple):
 
 
 _PLANE, _LINE = types.float64[:, ::1], types.float64[::1]
-_FLOW = types.NamedTuple([_PLANE, _PLANE, _LINE, _LINE, _LINE, _LINE], Flow)
-_PAIR = types.UniTuple(types.float64, 2)
+_FLOW = types.NamedTuple([_PLANE, _PLANE, _LINE, _LINE, _LINE, _LINE], Flow)  # type: ignore[no-untyped-call]
+_PAIR = types.UniTuple(types.float64, 2)  # type: ignore[no-untyped-call]
 
 
 @njit(types.float64(_PLANE, types.float64, types.float64), cache=True)
@@ -58,11 +58,25 @@ def _on_side(values: FloatArray, x: float, y: float) -> Any:
 
 
 @njit(_PAIR(_PLANE, types.int64, _FLOW), cache=True)
-def circulation(points: FloatArray, n: int, flow: Flow) -> Any:
-    """Circulation (m2 s-1) along the closed contour of the first n points, and its length (m).
+def velocity_along(points: FloatArray, n: int, flow: Flow) -> Any:
+    """Mean velocity along a closed contour, and the contour's length.
 
-    Positive the way the points run. Where the velocity is unknown along less than half of the contour, both are
-    of the part where it is known; otherwise NaN.
+    Parameters
+    ----------
+    points : (2, m) array
+        Fractional columns and rows, on sides of grid cells.
+    n : int
+        How many of the points to use.
+    flow : Flow
+        Velocity and metric.
+
+    Returns
+    -------
+    velocity : float
+        m s-1, positive the way the points run: the mean over the part of the contour where it is known; NaN if
+        that is less than half.
+    length : float
+        m.
     """
     total, known, length = 0.0, 0.0, 0.0
     for k in range(n):
@@ -80,9 +94,9 @@ def circulation(points: FloatArray, n: int, flow: Flow) -> Any:
         if not np.isnan(u + v):
             known += step
             total += u * east + v * north
-    if known < 0.5 * length:
-        return np.nan, np.nan
-    return total, known
+    if known == 0.0 or known < 0.5 * length:
+        return np.nan, length
+    return total / known, length
 
 
 @njit(
@@ -105,10 +119,8 @@ def _mean_speed(
 ) -> Any:
     """Mean velocity along the contour at a level, positive in the given sense; minus infinity if unknown."""
     n, _ = outer_contour(field, level, row, column, periodic, points, crossings)
-    total, length = circulation(points, n, flow)
-    if not length > 0.0:
-        return -np.inf
-    return sense * total / length
+    velocity, _ = velocity_along(points, n, flow)
+    return -np.inf if np.isnan(velocity) else sense * velocity
 
 
 @njit(
@@ -129,11 +141,37 @@ def fastest_level(
     points: FloatArray,
     crossings: IntArray,
 ) -> Any:
-    """Level of the contour with the highest mean velocity along it, and that velocity (m s-1).
+    """Level of the contour with the highest mean velocity along it, from the outer contour to the peak.
 
-    Searches from the outer contour to the maximum at (row, column): evenly spaced levels, then golden section
-    round the best (Kiefer 1953, Sequential minimax search for a maximum). `sense` is 1 if anticlockwise counts
-    as positive, else -1. The velocity is minus infinity if it is known along no contour.
+    Tries evenly spaced levels, then closes in round the best by golden section.
+
+    Parameters
+    ----------
+    field : (y, x) array
+        m; NaN where there is no data.
+    outer_level : float
+        m.
+    sense : float
+        1 if anticlockwise velocity counts as positive, -1 if clockwise does.
+    row, column : int
+        Grid point of the maximum.
+    periodic : bool
+        The last column neighbours the first.
+    flow : Flow
+        Velocity and metric.
+    points, crossings : array
+        Buffers, see `contour_buffers`.
+
+    Returns
+    -------
+    level : float
+        m.
+    velocity : float
+        m s-1; minus infinity if it is known along no contour.
+
+    References
+    ----------
+    Kiefer (1953), Sequential minimax search for a maximum.
     """
     step = (field[row, column] - outer_level) / _LEVELS
     best_level, best_speed = outer_level, -np.inf
