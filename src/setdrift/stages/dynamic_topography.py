@@ -1,0 +1,54 @@
+"""Daily dynamic topography: sea level anomaly plus the mean."""
+
+from __future__ import annotations
+
+import datetime as dt
+from collections.abc import Callable
+from typing import Any
+
+import xarray as xr
+
+from setdrift.data.configuration import Configuration
+from setdrift.data.day_store import DayStore, refresh_days
+from setdrift.data.days import Block
+from setdrift.data.digests import digest
+from setdrift.data.fixed import fixed_digest, load_fixed_fields
+from setdrift.data.receipts import analysed_period, contents_between, write_receipt
+
+ALGORITHM_VERSION = 1
+"""Raised by hand whenever the stage's results change."""
+
+
+def add_mean_block(configuration: Configuration, block: Block, announce: Callable[[str], None]) -> dict[str, Any]:
+    """Add the mean dynamic topography to the maps of a block.
+
+    Parameters
+    ----------
+    configuration : Configuration
+        The analysis.
+    block : Block
+        Days handled by this job.
+    announce : callable
+        Told of each day, for the log.
+
+    Returns
+    -------
+    dict
+        The job's receipt.
+    """
+    days = block.days_within(*analysed_period(configuration))
+    mapped = contents_between(configuration, "maps", days[0], days[-1])
+    mean_digest = fixed_digest(configuration, "mean_dynamic_topography")
+    maps = DayStore(configuration.work / "maps")
+    mean = load_fixed_fields(configuration)["mean_dynamic_topography"]
+
+    def made_from(day: dt.date) -> str:
+        return digest(ALGORITHM_VERSION, mapped[day], mean_digest)
+
+    def make(day: dt.date) -> xr.Dataset:
+        anomaly = maps.load(day)["sea_level_anomaly"]
+        return xr.Dataset({"dynamic_topography": (anomaly.dims, anomaly.values + mean.values)}, coords=anomaly.coords)
+
+    store = DayStore(configuration.work / "dynamic_topography")
+    contents = refresh_days(store, days, made_from, make, announce)
+    return write_receipt(configuration, "dynamic_topography", block, contents)

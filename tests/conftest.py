@@ -1,0 +1,50 @@
+"""Rules and fixtures shared by all tests."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from pathlib import Path
+from typing import Any
+
+import pytest
+import yaml
+
+from setdrift.data.configuration import Configuration, load_configuration
+
+SMALL_ANALYSIS: dict[str, Any] = {
+    "analysis": "small_sea",
+    "output": "results",
+    "period": {"start": "2031-03-01", "end": "2031-03-03"},
+    "grid": {"west": -30, "east": -26, "south": 8, "north": 11, "spacing": 0.5},
+    "altimeters": {"heron": {"files": "heron/*.nc", "noise_m": 0.02}},
+    "mean_dynamic_topography": {"file": "mean.nc"},
+    "land": {"file": "land.nc"},
+    "mapping": {"window_days": 2},
+    "block_days": 2,
+}
+
+
+def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
+    """Refuse a check in tests/published/ that does not name its source."""
+    for item in items:
+        if "published" in item.path.parts and item.get_closest_marker("source") is None:
+            raise pytest.UsageError(f"{item.nodeid}: add @pytest.mark.source('paper, equation')")
+
+
+@pytest.fixture
+def configure(tmp_path: Path) -> Callable[..., Configuration]:
+    """Return a function that makes a configuration in a temporary folder, some keys changed."""
+
+    def make(**changes: Any) -> Configuration:
+        content = yaml.safe_load(yaml.safe_dump(SMALL_ANALYSIS))
+        for key, value in changes.items():
+            section, _, last = key.rpartition("__")
+            target = content
+            for part in section.split("__") if section else []:
+                target = target.setdefault(part, {})
+            target[last] = value
+        path = tmp_path / "small_sea.yaml"
+        path.write_text(yaml.safe_dump(content))
+        return load_configuration(path)
+
+    return make
