@@ -191,3 +191,38 @@ def count_enclosed(field: FloatArray, crossings: IntArray, floor: float) -> Any:
                 return 0
         count += last - before
     return count
+
+
+@njit("f8(f8[:, ::1], b1, f8, f8)", cache=True)
+def value_on_side(values: FloatArray, periodic: bool, x: float, y: float) -> Any:
+    """Value at a point on a side of a grid cell: of the cubic through the four grid points in line with it.
+
+    Parameters
+    ----------
+    values : (y, x) array
+        On the grid; NaN where missing.
+    periodic : bool
+        The last column neighbours the first.
+    x, y : float
+        Fractional column and row, one of them whole.
+
+    Returns
+    -------
+    float
+        Linear between the ends of the side if one of the other two points is missing; NaN if an end is.
+    """
+    rows, columns = values.shape
+    j, i = int(np.floor(y)), int(np.floor(x))
+    east, north = (1, 0) if x > i else (0, 1)
+    part = (x - i) + (y - j)
+    start = values[j, i % columns]
+    if part == 0.0:
+        return start
+    end = values[j + north, (i + east) % columns]
+    linear = start + part * (end - start)
+    if j < north or j + 2 * north >= rows or (not periodic and (i < east or i + 2 * east >= columns)):
+        return linear
+    before = values[j - north, (i - east) % columns]
+    after = values[j + 2 * north, (i + 2 * east) % columns]
+    bend = (2.0 - part) * (before - 2.0 * start + end) + (1.0 + part) * (start - 2.0 * end + after)
+    return linear if np.isnan(bend) else linear - part * (1.0 - part) * bend / 6.0

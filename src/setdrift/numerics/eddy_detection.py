@@ -123,7 +123,7 @@ def detect_eddies(
         longitude,
         authalic_latitude(latitude, earth),
         periodic,
-        Flow(u, v, longitude, latitude, east_metres, north_metres),
+        Flow(u, v, longitude, latitude, east_metres, north_metres, periodic),
         _bounds(limits, earth),
         Buffers(points, np.empty_like(points), crossings),
         earth,
@@ -231,18 +231,17 @@ def _measured(
     longitude, latitude, extremum = peak
     sense = -polarity * float(np.copysign(1.0, latitude))
 
-    def contour(at: float) -> tuple[int, FloatArray, float, float]:
-        n, _ = outer_contour(field, at, row, column, setting.periodic, points, crossings)
+    def size_and_line(n: int) -> tuple[float, float, FloatArray]:
         project_points(points, n, setting.authalic, setting.longitude, row, column, setting.bounds.radius, plane)
         area, misfit = area_and_misfit(plane, n)
         x, y = points[0, :n], points[1, :n]
-        return n, np.stack([_along(setting.longitude, x, 360.0), _along(setting.latitude, y, 0.0)]), area, misfit
+        return area, misfit, np.stack([_along(setting.longitude, x, 360.0), _along(setting.latitude, y, 0.0)])
 
-    _, outer, area, misfit = contour(level)
-    fastest_at, speed = fastest_level(
-        field, level, sense, row, column, setting.periodic, setting.flow, points, crossings
-    )
-    n, fastest, fastest_area, _ = contour(fastest_at)
+    n, _ = outer_contour(field, level, row, column, setting.periodic, points, crossings)
+    area, misfit, outer = size_and_line(n)
+    fastest_at, speed = fastest_level(field, level, sense, row, column, setting.flow, points, crossings)
+    n, _ = outer_contour(field, fastest_at, row, column, setting.periodic, points, crossings)
+    fastest_area, _, fastest = size_and_line(n)
     velocity, length = velocity_along(points, n, setting.flow)
     if np.isnan(velocity):
         speed, fastest_area = np.nan, np.nan

@@ -8,7 +8,7 @@ import numpy as np
 from numba import njit, types
 from numpy.typing import NDArray
 
-from setdrift.numerics.eddy_contours import outer_contour
+from setdrift.numerics.eddy_contours import outer_contour, value_on_side
 from setdrift.numerics.eddy_geometry import interpolate_axis
 
 FloatArray = NDArray[np.float64]
@@ -29,6 +29,8 @@ class Flow(NamedTuple):
         Degrees.
     east_metres, north_metres : (y,) array
         Length of a degree of longitude and of latitude, m.
+    periodic : bool
+        The last column neighbours the first.
     """
 
     eastward: FloatArray
@@ -37,24 +39,26 @@ class Flow(NamedTuple):
     latitude: FloatArray
     east_metres: FloatArray
     north_metres: FloatArray
+    periodic: bool
 
 
 _PLANE, _LINE = types.float64[:, ::1], types.float64[::1]
-_FLOW = types.NamedTuple([_PLANE, _PLANE, _LINE, _LINE, _LINE, _LINE], Flow)  # type: ignore[no-untyped-call]
+_FLOW = types.NamedTuple([_PLANE, _PLANE, _LINE, _LINE, _LINE, _LINE, types.boolean], Flow)  # type: ignore[no-untyped-call]
 _PAIR = types.UniTuple(types.float64, 2)  # type: ignore[no-untyped-call]
 
 
-@njit(types.float64(_PLANE, types.float64, types.float64), cache=True)
-def _on_side(values: FloatArray, x: float, y: float) -> Any:
-    """Value at a point on a side of a grid cell, from the two ends of that side only."""
-    columns = values.shape[1]
-    j, i = int(np.floor(y)), int(np.floor(x))
-    start = values[j, i % columns]
-    if x > i:
-        return start + (x - i) * (values[j, (i + 1) % columns] - start)
-    if y > j:
-        return start + (y - j) * (values[j + 1, i % columns] - start)
-    return start
+@njit(_PAIR(_PLANE, types.int64, types.int64, _FLOW), cache=True)
+def _step(points: FloatArray, start: int, end: int, flow: Flow) -> Any:
+    """Eastward and northward distance from one point of a contour to another, m."""
+    x, y = points[0, start], points[1, start]
+    end_x, end_y = points[0, end], points[1, end]
+    east = interpolate_axis(flow.longitude, end_x, 360.0) - interpolate_axis(flow.longitude, x, 360.0)
+    north = interpolate_axis(flow.latitude, end_y, 0.0) - interpolate_axis(flow.latitude, y, 0.0)
+    middle = 0.5 * (y + end_y)
+    return (
+        east * interpolate_axis(flow.east_metres, middle, 0.0),
+        north * interpolate_axis(flow.north_metres, middle, 0.0),
+    )
 
 
 @njit(_PAIR(_PLANE, types.int64, _FLOW), cache=True)
@@ -79,21 +83,22 @@ def velocity_along(points: FloatArray, n: int, flow: Flow) -> Any:
         m.
     """
     total, known, length = 0.0, 0.0, 0.0
+    east, north = _step(points, n - 1, 0, flow)
     for k in range(n):
-        x, y = points[0, k], points[1, k]
-        next_x, next_y = points[0, (k + 1) % n], points[1, (k + 1) % n]
-        middle = 0.5 * (y + next_y)
-        east = interpolate_axis(flow.longitude, next_x, 360.0) - interpolate_axis(flow.longitude, x, 360.0)
-        north = interpolate_axis(flow.latitude, next_y, 0.0) - interpolate_axis(flow.latitude, y, 0.0)
-        east *= interpolate_axis(flow.east_metres, middle, 0.0)
-        north *= interpolate_axis(flow.north_metres, middle, 0.0)
-        u = 0.5 * (_on_side(flow.eastward, x, y) + _on_side(flow.eastward, next_x, next_y))
-        v = 0.5 * (_on_side(flow.northward, x, y) + _on_side(flow.northward, next_x, next_y))
-        step = np.hypot(east, north)
-        length += step
-        if not np.isnan(u + v):
-            known += step
-            total += u * east + v * north
+        next_east, next_north = _step(points, k, (k + 1) % n, flow)
+        before, after = np.hypot(east, north), np.hypot(next_east, next_north)
+        # direction of the parabola through three points at the middle one; a plain chord would lean to one side
+        x = after**2 * east + before**2 * next_east
+        y = after**2 * north + before**2 * next_north
+        u = value_on_side(flow.eastward, flow.periodic, points[0, k], points[1, k])
+        v = value_on_side(flow.northward, flow.periodic, points[0, k], points[1, k])
+        along = (u * x + v * y) / max(np.hypot(x, y), 1e-30)
+        weight = 0.5 * (before + after)
+        east, north = next_east, next_north
+        length += weight
+        if not np.isnan(along):
+            known += weight
+            total += weight * along
     if known == 0.0 or known < 0.5 * length:
         return np.nan, length
     return total / known, length
@@ -101,8 +106,7 @@ def velocity_along(points: FloatArray, n: int, flow: Flow) -> Any:
 
 @njit(
     types.float64(
-        _PLANE, types.float64, types.float64, types.int64, types.int64, types.boolean, _FLOW, _PLANE,
-        types.int64[::1],
+        _PLANE, types.float64, types.float64, types.int64, types.int64, _FLOW, _PLANE, types.int64[::1],
     ),
     cache=True,
 )  # fmt: skip
@@ -112,21 +116,19 @@ def _mean_speed(
     sense: float,
     row: int,
     column: int,
-    periodic: bool,
     flow: Flow,
     points: FloatArray,
     crossings: IntArray,
 ) -> Any:
     """Mean velocity along the contour at a level, positive in the given sense; minus infinity if unknown."""
-    n, _ = outer_contour(field, level, row, column, periodic, points, crossings)
+    n, _ = outer_contour(field, level, row, column, flow.periodic, points, crossings)
     velocity, _ = velocity_along(points, n, flow)
     return -np.inf if np.isnan(velocity) else sense * velocity
 
 
 @njit(
     _PAIR(
-        _PLANE, types.float64, types.float64, types.int64, types.int64, types.boolean, _FLOW, _PLANE,
-        types.int64[::1],
+        _PLANE, types.float64, types.float64, types.int64, types.int64, _FLOW, _PLANE, types.int64[::1],
     ),
     cache=True,
 )  # fmt: skip
@@ -136,7 +138,6 @@ def fastest_level(
     sense: float,
     row: int,
     column: int,
-    periodic: bool,
     flow: Flow,
     points: FloatArray,
     crossings: IntArray,
@@ -155,8 +156,6 @@ def fastest_level(
         1 if anticlockwise velocity counts as positive, -1 if clockwise does.
     row, column : int
         Grid point of the maximum.
-    periodic : bool
-        The last column neighbours the first.
     flow : Flow
         Velocity and metric.
     points, crossings : array
@@ -177,7 +176,7 @@ def fastest_level(
     best_level, best_speed = outer_level, -np.inf
     for k in range(_LEVELS):
         level = outer_level + k * step
-        speed = _mean_speed(field, level, sense, row, column, periodic, flow, points, crossings)
+        speed = _mean_speed(field, level, sense, row, column, flow, points, crossings)
         if speed > best_speed:
             best_level, best_speed = level, speed
     ratio = 0.5 * (np.sqrt(5.0) - 1.0)
@@ -185,8 +184,8 @@ def fastest_level(
     high = min(best_level + step, outer_level + (_LEVELS - 0.5) * step)
     for _ in range(_GOLDEN_STEPS):
         left, right = high - ratio * (high - low), low + ratio * (high - low)
-        left_speed = _mean_speed(field, left, sense, row, column, periodic, flow, points, crossings)
-        right_speed = _mean_speed(field, right, sense, row, column, periodic, flow, points, crossings)
+        left_speed = _mean_speed(field, left, sense, row, column, flow, points, crossings)
+        right_speed = _mean_speed(field, right, sense, row, column, flow, points, crossings)
         if left_speed >= right_speed:
             high, level, speed = right, left, left_speed
         else:
