@@ -18,6 +18,9 @@ from setdrift.data.days import from_day_number
 from setdrift.data.netcdf import Floats, find_variable, floats, in_units, opened, seconds_since_1970
 from setdrift.errors import SetdriftError
 
+READING_VERSION = 1
+"""Raised by hand whenever what is read from a file changes."""
+
 DAY_S = 86400.0
 LAST_TIME_S = 230 * 365.25 * DAY_S  # year 2200: times are believed from 1970 to here
 STRAY_SPANS = 10.0  # a time so many spans of its file (5th to 95th percentile) off the median is not believed
@@ -184,10 +187,8 @@ def _check_shapes(where: str, located: dict[str, Any]) -> None:
 
 
 def _believable(time: Floats) -> Floats:
-    """Put NaN for times that cannot be: outside 1970-2200, or far from all others of the file.
-
-    One stray time would otherwise stretch a file over decades of days (common practice, no source).
-    """
+    """Put NaN for times that cannot be: outside 1970-2200, or far from all others of the file."""
+    # one stray time would stretch a file over decades of days (common practice, no source)
     time = np.where((time >= 0.0) & (time < LAST_TIME_S), time, np.nan)
     if np.all(np.isnan(time)):
         return time
@@ -199,11 +200,9 @@ def _flagged(flag: Floats, good: GoodValues) -> NDArray[np.bool_]:
     """Return which flags are not good; a missing flag, or one that is no whole number, is not."""
     sound = np.isfinite(flag) & (flag == np.rint(flag)) & (abs(flag) < 2.0**53)
     bits = np.where(sound, flag, 0.0).astype(np.int64)
-    if good.values is not None:
-        fine = np.isin(bits, good.values)
-    else:
-        fine = (bits & good.mask) == good.equals
-    return np.asarray(~(sound & fine))
+    if good.mask is not None:
+        return np.asarray(~(sound & ((bits & good.mask) == good.equals)))
+    return np.asarray(~(sound & np.isin(bits, good.values or ())))
 
 
 def _whole_numbers(variable: Any) -> NDArray[np.int64] | None:
