@@ -7,7 +7,7 @@ import pytest
 from scipy.ndimage import gaussian_filter
 
 from setdrift.numerics.earth import beta_parameter, coriolis_parameter, gravity, meridional_radius
-from setdrift.numerics.equatorial_balance import EquatorialBand, equatorial_velocity
+from setdrift.numerics.equatorial_balance import EquatorialBand, equatorial_error_gain, equatorial_velocity
 
 ROWS = np.arange(-8.0, 8.01, 0.25)
 COLUMNS = np.arange(0.0, 10.0, 0.25)
@@ -114,20 +114,46 @@ def test_columns_that_share_their_gaps_do_not_disturb_each_other():
     np.testing.assert_allclose(u[:, 31], single[:, 1], atol=1e-12)
 
 
+def _correlated_noise(columns):
+    """1 cm of noise with the correlation exp(-(r / 100 km)^2), periodic in longitude."""
+    white = np.random.default_rng(2).standard_normal((2000, columns.size))
+    noise = gaussian_filter(white, 100.0 / 27.7 / 2.0, mode="wrap")
+    # stack independent pieces as days: the smoothing reaches over 15 rows, pieces are 80 rows apart
+    pieces = np.stack([noise[start : start + ROWS.size] for start in range(0, 1920, 80)])
+    return 0.01 * pieces / noise.std()
+
+
+def test_the_error_gain_is_what_noise_shows():
+    columns = np.arange(0.0, 360.0, 0.25)
+    noise = _correlated_noise(columns)
+    for velocity, gain in zip(
+        equatorial_velocity(noise, ROWS, columns, periodic=True), equatorial_error_gain(ROWS, 1e5), strict=True
+    ):
+        scatter = velocity[:, BAND].std(axis=(0, 2))
+        # 24 pieces of some 200 independent stretches: 1 %; v's fourth-order difference loses 1 % of the
+        # slope of noise this short, and the noise is made on a grid whose step is 27.7 km both ways
+        np.testing.assert_allclose(scatter, 0.01 * gain[BAND], rtol=0.04)
+        assert np.isnan(gain[~BAND]).all()
+
+
+def test_no_error_gain_without_a_fit():
+    assert np.isnan(equatorial_error_gain(np.arange(3.0, 9.0), 1e5)).all()
+    with pytest.raises(ValueError, match="correlation_length"):
+        equatorial_error_gain(ROWS, 0.0)
+
+
 def test_one_centimetre_of_noise_stays_below_thirty_centimetres_a_second():
     """Errors of maps are correlated over about 100 km (exp(-(r / 100 km)^2) here)."""
     columns = np.arange(0.0, 360.0, 0.25)
-    white = np.random.default_rng(2).standard_normal((400, columns.size))
-    noise = gaussian_filter(white, 100.0 / 27.8 / 2.0, mode="wrap")[: ROWS.size]
-    noise *= 0.01 / noise.std()
+    noise = _correlated_noise(columns)
     u, v = equatorial_velocity(noise, ROWS, columns, periodic=True)
     inside = np.abs(ROWS) <= 4.0
     # measured 0.24 (u) and 0.22 (v) at the equator
-    assert u[inside].std(axis=1).max() < 0.28
-    assert v[inside].std(axis=1).max() < 0.26
+    assert u[:, inside].std(axis=(0, 2)).max() < 0.28
+    assert v[:, inside].std(axis=(0, 2)).max() < 0.26
     # against the f-plane at half a degree, where it would amplify to 1.1 m/s
-    f_plane = gravity(0.5) / coriolis_parameter(0.5) * np.diff(noise, axis=0).std() / (0.25 * 110574.0)
-    assert f_plane > 3.0 * u[inside].std(axis=1).max()
+    f_plane = gravity(0.5) / coriolis_parameter(0.5) * np.diff(noise, axis=1).std() / (0.25 * 110574.0)
+    assert f_plane > 3.0 * u[:, inside].std(axis=(0, 2)).max()
 
 
 @pytest.mark.parametrize(

@@ -8,12 +8,14 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from setdrift.numerics.earth import WGS84, coriolis_parameter, gravity, meridional_radius
+from setdrift.numerics.equatorial_balance import equatorial_error_gain
 from setdrift.numerics.geostrophy import (
     EquatorialBand,
     VelocityMethod,
     equatorial_velocity,
     f_plane_velocity,
     geostrophic_velocity,
+    geostrophic_velocity_error,
     rossby_number,
     velocity_from_slopes,
 )
@@ -215,6 +217,39 @@ def test_no_f_plane_velocity_on_the_equator():
         assert np.isnan(u[1]).all()
         assert np.isnan(v[1]).all()
         assert not np.isnan(u[[0, 2]]).any()
+
+
+def test_velocity_errors_off_the_equator_are_those_of_the_slopes():
+    rows = np.array([-45.0, -44.75, -44.5])
+    east, north = geostrophic_velocity_error(
+        np.full((3, 2), 0.02), np.full((3, 2), 1e-7), np.full((3, 2), 2e-7), rows, correlation_length=1e5
+    )
+    factor = gravity(rows[0]) / abs(coriolis_parameter(rows[0]))
+    np.testing.assert_allclose(east[0], 2e-7 * factor, rtol=1e-12)
+    np.testing.assert_allclose(north[0], 1e-7 * factor, rtol=1e-12)
+
+
+def test_velocity_errors_near_the_equator_are_those_of_the_fit():
+    rows = np.arange(-10.0, 10.01, 0.25)
+    height = np.full((2, rows.size, 3), 0.02)
+    height[1] *= 2.0
+    slope = np.full_like(height, 2e-7)
+    height[:, :, 2] = slope[:, :, 2] = np.nan
+    errors = geostrophic_velocity_error(height, slope, slope, rows, correlation_length=1e5)
+    gains = equatorial_error_gain(rows, 1e5)
+    near = np.abs(rows) <= BAND.inner
+    for error, gain in zip(errors, gains, strict=True):
+        np.testing.assert_allclose(error[0, near, 0], 0.02 * gain[near], rtol=1e-12)
+        np.testing.assert_allclose(error[1, near], 2.0 * error[0, near], rtol=1e-12)
+        assert np.all(error[..., :2] > 0.0)
+        assert np.isnan(error[..., 2]).all()
+
+
+def test_velocity_errors_without_a_fit_stop_with_the_velocity():
+    rows = np.arange(0.5, 10.01, 0.25)
+    ones = np.ones((rows.size, 1))
+    east, _ = geostrophic_velocity_error(ones, ones, ones, rows, correlation_length=1e5)
+    np.testing.assert_array_equal(np.isnan(east[:, 0]), rows < BAND.minimum_latitude)
 
 
 def test_rossby_number_is_signed_by_the_sense_of_rotation():

@@ -10,7 +10,11 @@ from numpy.typing import ArrayLike, NDArray
 
 from setdrift.numerics.derivatives import slopes
 from setdrift.numerics.earth import WGS84, Earth, coriolis_parameter, gravity
-from setdrift.numerics.equatorial_balance import EquatorialBand, equatorial_velocity
+from setdrift.numerics.equatorial_balance import (
+    EquatorialBand,
+    equatorial_error_gain,
+    equatorial_velocity,
+)
 
 __all__ = [
     "EquatorialBand",
@@ -19,6 +23,7 @@ __all__ = [
     "equatorial_velocity",
     "f_plane_velocity",
     "geostrophic_velocity",
+    "geostrophic_velocity_error",
     "rossby_number",
     "velocity_from_slopes",
 ]
@@ -185,6 +190,62 @@ def geostrophic_velocity(
     return GeostrophicVelocity(eastward, northward, method)
 
 
+def geostrophic_velocity_error(
+    height_error: ArrayLike,
+    slope_x_error: ArrayLike,
+    slope_y_error: ArrayLike,
+    latitude: ArrayLike,
+    *,
+    correlation_length: float,
+    band: EquatorialBand | None = None,
+    earth: Earth = WGS84,
+) -> tuple[FloatArray, FloatArray]:
+    """Return the standard errors of `geostrophic_velocity`.
+
+    The f-plane passes on the errors of the slopes, the equatorial fit those of sea level itself; the blend
+    adds the two with their weights as if they were fully correlated, which cannot be too small.
+
+    Parameters
+    ----------
+    height_error : (..., y, x) array
+        Standard error of sea level, m, for the fit; taken as uniform over each column's band.
+    slope_x_error, slope_y_error : (..., y, x) array
+        Standard errors of the eastward and northward slope, m m-1, for the f-plane.
+    latitude : (y,) array
+        Degrees north, ascending, regular.
+    correlation_length : float
+        Of the sea level error, m: correlation exp(-(r / correlation_length)^2).
+    band : EquatorialBand, optional
+        Treatment of the equator; the default band unless given.
+    earth : Earth
+        Earth model.
+
+    Returns
+    -------
+    eastward, northward : (..., y, x) array
+        m s-1. The caller blanks the points whose velocity is not known.
+
+    Raises
+    ------
+    ValueError
+        If the correlation length is not positive.
+
+    References
+    ----------
+    Gauss's propagation of error through the balances of `velocity_from_slopes` and `equatorial_velocity`.
+    """
+    band = band or EquatorialBand()
+    rows = np.asarray(latitude, dtype=np.float64)
+    eastward, northward = velocity_from_slopes(slope_x_error, slope_y_error, rows, earth)
+    gains = equatorial_error_gain(rows, correlation_length, band=band, earth=earth)
+    weight = _f_plane_weight(~np.isnan(eastward + northward), ~np.isnan(gains[0])[:, np.newaxis], rows, band)
+    height = np.asarray(height_error, np.float64)
+    return (
+        _mixed(np.abs(eastward), height * gains[0][:, np.newaxis], weight),
+        _mixed(np.abs(northward), height * gains[1][:, np.newaxis], weight),
+    )
+
+
 def rossby_number(
     relative_vorticity: ArrayLike,
     latitude: ArrayLike,
@@ -232,9 +293,9 @@ def _f_plane_weight(
 
 
 def _mixed(f_plane: FloatArray, beta_plane: FloatArray, weight: FloatArray) -> FloatArray:
-    """Return the blend; a balance that is not known (NaN) has no weight and no say."""
-    mixed: FloatArray = weight * np.nan_to_num(f_plane) + (1.0 - weight) * np.nan_to_num(beta_plane)
-    return mixed
+    """Return the blend; a balance without weight has no say, even where it is not known (NaN)."""
+    blend = weight * f_plane + (1.0 - weight) * beta_plane
+    return np.where(weight == 0.0, beta_plane, np.where(weight == 1.0, f_plane, blend))
 
 
 def _method(weight: FloatArray) -> NDArray[np.int8]:
