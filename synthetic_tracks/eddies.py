@@ -201,5 +201,7 @@ def _clear(eddies: Eddies, other: Eddies, values: dict[str, Any]) -> bool:
     v = (eddies.northward_drift - other.northward_drift) * north
     closest = np.clip(-(x * u + y * v) / (u**2 + v**2 + 1e-9), 0, np.maximum(end - start, 0))
     distance = np.hypot(x + u * closest, y + v * closest)
-    apart = distance > values["separation"] * (eddies.radius + other.radius)
+    alike = eddies.amplitude * other.amplitude > 0
+    limit = np.where(alike, values["separation"]["alike"], values["separation"]["opposite"])
+    apart = distance > limit * (eddies.radius + other.radius)
     return bool(np.all(apart | (end <= start)))

@@ -19,7 +19,7 @@ from synthetic_tracks.waves import Background, KelvinWave, RossbyWave, random_ba
 _STEP = 0.01
 """Half step of the derivative, degrees: an error of 1e-4 of the slope at the smallest eddy."""
 _EDGE_DEGREES = 5.0
-_EDGE_DAYS = 60.0
+_EDGE_DAYS = 40.0
 _NO_ROTATION = 1.0
 """Latitude within which the fields differentiated here are flat and f is too small to divide by."""
 

@@ -104,21 +104,35 @@ def load(path: Path = PACKAGED) -> Scenario:
     Raises
     ------
     ValueError
-        If a key is missing or unknown.
+        If the file is not YAML, or a key is missing or unknown.
     """
     text = path.read_bytes()
     try:
         values = yaml.safe_load(text)
-        values["box"] = Box(**values["box"])
-        values["altimeters"] = tuple(Altimeter(name, **v) for name, v in values["altimeters"].items())
-        return Scenario(**values, digest=hashlib.sha256(text).hexdigest())
-    except (TypeError, KeyError, AttributeError) as error:
-        raise ValueError(f"{path}: not a scenario: {error}; compare it with {PACKAGED.name}") from error
+    except yaml.YAMLError as error:
+        raise ValueError(f"{path}: {error}") from error
+    _check_keys(values, yaml.safe_load(PACKAGED.read_bytes()), str(path))
+    values["box"] = Box(**values["box"])
+    values["altimeters"] = tuple(Altimeter(name, **v) for name, v in values["altimeters"].items())
+    return Scenario(**values, digest=hashlib.sha256(text).hexdigest())
 
 
 def day_number(day: date) -> float:
     """Days from 2000-01-01 00:00 UTC to the start of a day, the time axis of this package."""
     return float((day - _DAY_ZERO).days)
+
+
+def _check_keys(values: Any, pattern: dict[str, Any], where: str) -> None:
+    """Refuse keys that the packaged scenario does not have, and the lack of those it has (any altimeter may lack)."""
+    if not isinstance(values, dict):
+        raise ValueError(f"{where}: must hold the keys {', '.join(pattern)}")
+    if unknown := sorted(values.keys() - pattern.keys()):
+        raise ValueError(f"{where}: unknown key {unknown[0]}; there are {', '.join(pattern)}")
+    if (missing := sorted(pattern.keys() - values.keys())) and not where.endswith(": altimeters"):
+        raise ValueError(f"{where}: {missing[0]} is missing")
+    for key, value in values.items():
+        if isinstance(pattern[key], dict):
+            _check_keys(value, pattern[key], f"{where}: {key}")
 
 
 def _days_between(first: date, last: date) -> list[date]:

@@ -6,10 +6,11 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+import yaml
 from netCDF4 import Dataset
 
 import synthetic_tracks
-from synthetic_tracks import files, truth
+from synthetic_tracks import files, scenario, truth
 from synthetic_tracks.__main__ import main
 
 
@@ -94,11 +95,32 @@ def test_files_of_an_earlier_scenario_go(tmp_path):
     assert [p.exists() for p in (old, kept, foreign)] == [False, True, True]
 
 
-def test_an_unknown_key_is_reported(tiny_file, tmp_path, capsys):
-    spoilt = tmp_path / "spoilt.yaml"
-    spoilt.write_text(tiny_file.read_text() + "tides: {}\n")
+@pytest.mark.parametrize(
+    ("old", "new", "said"),
+    [
+        ("seed:", "tides: {}\nseed:", "unknown key tides"),
+        ("margin_days:", "margin:", "unknown key margin"),
+        ("  waves: 60\n", "", "background: waves is missing"),
+        ("    noise_m: 0.017\n", "", "altimeters: heron: noise_m is missing"),
+        ("box:", "box: [", "spoilt.yaml"),
+        ("box:\n", "box: here\nbooks:\n", "unknown key books"),
+    ],
+)
+def test_a_spoilt_scenario_is_explained(tiny_file, tmp_path, capsys, old, new, said):
+    text, spoilt = tiny_file.read_text(), tmp_path / "spoilt.yaml"
+    assert old in text
+    spoilt.write_text(text.replace(old, new, 1))
     assert main(["--output", str(tmp_path / "out"), "--scenario", str(spoilt)]) == 1
-    assert "tides" in capsys.readouterr().err
+    assert said in capsys.readouterr().err
+    assert not (tmp_path / "out").exists()
+
+
+def test_an_altimeter_may_be_left_out(tiny_file, tmp_path):
+    values = yaml.safe_load(tiny_file.read_text())
+    del values["altimeters"]["curlew"]
+    fewer = tmp_path / "fewer.yaml"
+    fewer.write_text(yaml.safe_dump(values))
+    assert [a.name for a in scenario.load(fewer).altimeters] == ["dunlin", "heron", "plover"]
 
 
 def test_the_truth_is_independent_of_setdrift():
