@@ -27,6 +27,8 @@ from setdrift.numerics.eddy_table import Eddies, Eddy, collect_eddies
 
 FloatArray = NDArray[np.float64]
 
+__all__ = ["ANTICYCLONIC", "CYCLONIC", "Eddies", "EddyLimits", "detect_eddies"]
+
 ANTICYCLONIC, CYCLONIC = 1, -1
 
 
@@ -60,7 +62,7 @@ class EddyLimits:
     equatorial_exclusion: float = 5.0
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class _Map:
     """Everything about a map and the limits that does not depend on the sign sought."""
 

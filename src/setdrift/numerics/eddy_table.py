@@ -11,7 +11,7 @@ FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Eddies:
     """Eddies of one map, from south to north, then by longitude.
 
@@ -74,7 +74,7 @@ class Eddies:
         return self.longitude.size
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Eddy:
     """One eddy, field by field as in `Eddies`; contours as (2, m) arrays of longitude and latitude."""
 
