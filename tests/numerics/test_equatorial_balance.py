@@ -156,6 +156,26 @@ def test_one_centimetre_of_noise_stays_below_thirty_centimetres_a_second():
     assert f_plane > 3.0 * u[:, inside].std(axis=(0, 2)).max()
 
 
+def test_a_grid_of_cell_centres_keeps_the_full_degree():
+    """Rows from 5.875 S to 5.875 N hold the whole band: a term of degree 8 comes through."""
+    rows = np.arange(-5.875, 6.0, 0.25)
+    field = np.tile(((rows / 6.0) ** 8)[:, np.newaxis], (1, 5))
+    u, _ = equatorial_velocity(field, rows, np.arange(5.0))
+    slope = 8.0 * (rows / 6.0) ** 7 / (6.0 * np.deg2rad(1.0) * meridional_radius(rows))
+    expected = -gravity(rows) / coriolis_parameter(rows) * slope
+    np.testing.assert_allclose(u[:, 2], expected, atol=1e-8 * np.abs(expected).max())
+
+
+def test_a_point_without_an_eastward_slope_leaves_the_rest_of_its_column():
+    field = _parabola()
+    field[30, [11, 13]] = np.nan
+    u, v = equatorial_velocity(field, ROWS, COLUMNS)
+    others = BAND & (np.arange(ROWS.size) != 30)
+    assert np.isnan(v[30, 12])
+    np.testing.assert_allclose(u[others, 12], _in_balance(ROWS[others]), rtol=1e-6)
+    np.testing.assert_allclose(v[others, 12], 0.0, atol=1e-9)
+
+
 @pytest.mark.parametrize(
     ("settings", "name"),
     [

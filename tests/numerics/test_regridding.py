@@ -86,6 +86,19 @@ def test_the_coast_is_filled_up_to_the_distance():
     assert np.isnan(regrid_bilinear(field, rows, columns, [0.0], target)).all()
 
 
+@pytest.mark.parametrize("side", [-1.0, 1.0])
+def test_filling_reaches_north_and_south(side):
+    rows = [-2.0, -1.0, 0.0, 1.0, 2.0]
+    field = np.where(np.array(rows) == side * 2.0, 5.0, np.nan)[:, np.newaxis]
+    assert regrid_bilinear(field, rows, [10.0], [0.0], [10.0], fill_distance_km=223.0)[0, 0] == 5.0
+    assert np.isnan(regrid_bilinear(field, rows, [10.0], [0.0], [10.0], fill_distance_km=222.0)[0, 0])
+
+
+def test_a_rounding_error_beyond_the_first_column_is_still_the_first_column():
+    found = regrid_bilinear(_plane(ROWS, COLUMNS), ROWS, COLUMNS, [0.0], [20.0 - 1e-12, 40.0 + 1e-12])
+    np.testing.assert_allclose(found[0], [1.0, -1.0], atol=1e-9)
+
+
 def test_filling_reaches_across_the_dateline():
     field = np.array([[7.0, np.nan, np.nan, np.nan]])
     columns = [179.0, 180.0, 181.0, 182.0]
