@@ -55,7 +55,7 @@ class EquatorialBand:
     outer: float = 6.0
     degree: int = 8
     wave_speed: float = 2.0
-    largest_gap: float = 1.0
+    largest_gap: float = 1.5
     least_reach: float = 2.0
     minimum_latitude: float = 2.0
 
