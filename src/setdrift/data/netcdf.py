@@ -66,6 +66,15 @@ def opened(path: Path) -> Iterator[netCDF4.Dataset]:
         ) from error
 
 
+def is_passing_trouble(error: SetdriftError) -> bool:
+    """Return whether the machine, not the file's content, is at fault, so that another try may do."""
+    cause = error.__cause__
+    if isinstance(cause, OSError):
+        # the NetCDF library's own errors are OSErrors with negative numbers
+        return (cause.errno or 0) > 0 and not isinstance(cause, FileNotFoundError)
+    return isinstance(cause, MemoryError)
+
+
 def variables(group: Any, prefix: str = "") -> dict[str, Any]:
     """Return every variable of a file by name, those in groups with the group's path before."""
     found = {prefix + name: variable for name, variable in group.variables.items()}

@@ -66,8 +66,10 @@ def turning_points(latitude: Floats) -> list[int]:
     list of int
         Index of each extreme that latitude came back from by more than `TURN_DEGREES`.
     """
-    smooth = _without_strays(latitude)
     turns: list[int] = []
+    if latitude.size == 0:
+        return turns
+    smooth = _without_strays(latitude)
     direction, extreme, low, high = 0, 0, 0, 0
     for i in _local_extremes(smooth):
         if direction == 0:

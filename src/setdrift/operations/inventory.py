@@ -19,6 +19,7 @@ from setdrift.data.alongtrack import READING_VERSION, read_time_span
 from setdrift.data.configuration import Altimeter, Configuration
 from setdrift.data.days import Block, blocks_between, days_between
 from setdrift.data.digests import digest, file_digest
+from setdrift.data.netcdf import is_passing_trouble
 from setdrift.data.records import read_record, write_record_if_changed
 from setdrift.errors import SetdriftError
 
@@ -114,9 +115,10 @@ class _Scan:
     def __init__(self, cache: Path) -> None:
         self._cache = cache
         try:
-            self._before: dict[str, Any] = read_record(cache) if cache.exists() else {}
+            before = read_record(cache) if cache.exists() else {}
         except SetdriftError:
-            self._before = {}
+            before = {}
+        self._before: dict[str, Any] = before if isinstance(before, dict) else {}
         self._now: dict[str, Any] = {}
         self.set_aside: list[dict[str, str]] = []
         self.examined = 0
@@ -196,6 +198,8 @@ def _of_altimeter(
             seen = scan.examine(key, path, lambda p: _look(p, altimeter))
         except OSError as error:
             seen = {"reason": f"{path}: cannot be read ({error.strerror}); mend its permissions or the disk"}
+        except SetdriftError as error:
+            seen = {"reason": str(error)}
         if "reason" in seen:
             scan.set_aside.append({"altimeter": name, "path": str(path), "reason": seen["reason"]})
             announce(f"set aside: {seen['reason']}")
@@ -208,10 +212,12 @@ def _of_altimeter(
 
 
 def _look(path: Path, altimeter: Altimeter) -> dict[str, Any]:
-    """Return the days a file has observations of, or why it cannot be used."""
+    """Return the days a file has observations of, or why its content cannot be used."""
     try:
         span = read_time_span(path, altimeter)
     except SetdriftError as error:
+        if is_passing_trouble(error):
+            raise
         return {"reason": str(error)}
     if span is None:
         return {"reason": f"{path}: holds no time that can be believed; replace the file or move it away"}

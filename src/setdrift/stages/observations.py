@@ -21,6 +21,7 @@ from setdrift.data.days import Block, day_number, days_between
 from setdrift.data.digests import digest, file_digest
 from setdrift.data.editing import REASONS, Edited, edit
 from setdrift.data.grids import observation_area
+from setdrift.data.netcdf import is_passing_trouble
 from setdrift.data.receipts import receipt_path
 from setdrift.data.records import read_record, write_record
 from setdrift.errors import SetdriftError
@@ -139,6 +140,9 @@ class _Gatherer:
             try:
                 self._tracks[path] = self._read(entry)
             except SetdriftError as error:
+                if is_passing_trouble(error):
+                    # set aside, the file would be missed for good: the day's digest says it was read
+                    raise
                 self._announce(f"set aside: {error}")
                 self._tracks[path] = str(error)
         return self._tracks[path]
