@@ -116,13 +116,25 @@ def test_slope_that_meets_an_end_is_no_spike() -> None:
 
 
 def test_window_stays_within_its_stretch() -> None:
-    # 40 points at 0 m, then 4 points at 1 m: across an island, or in the next pass
-    values = np.repeat([0.0, 1.0], [40, 4])
-    step = np.arange(44.0)
-    one = np.zeros(44, int)
-    assert find_spikes(step, values, one, 9, 5.0, 0.10).any()
-    assert not find_spikes(step + 100.0 * (step >= 40), values, one, 9, 5.0, 0.10).any()
-    assert not find_spikes(step, values, (step >= 40).astype(int), 9, 5.0, 0.10).any()
+    # 40 points at 0 m and 6 at 1 m, across an island or in the next pass
+    values = np.repeat([0.0, 1.0], [40, 6])
+    step = np.arange(46.0)
+    values[39] = 0.5
+    one = np.zeros(46, int)
+    found = find_spikes(step + 100.0 * (step >= 40), values, one, 9, 5.0, 0.10)
+    np.testing.assert_array_equal(np.flatnonzero(found), [39])
+    found = find_spikes(step, values, (step >= 40).astype(int), 9, 5.0, 0.10)
+    np.testing.assert_array_equal(np.flatnonzero(found), [39])
+    assert not find_spikes(step, values, one, 9, 5.0, 0.10)[39]
+
+
+def test_points_cut_off_are_judged_by_their_pass() -> None:
+    # two points between wide gaps, such as a land echo off an island, have no neighbours of their own
+    values = np.zeros(60)
+    values[[30, 31]] = -1.9
+    time = np.arange(60.0) + 50.0 * (np.arange(60) >= 30) + 50.0 * (np.arange(60) >= 32)
+    found = find_spikes(time, values, np.zeros(60, int), 9, 5.0, 0.10)
+    np.testing.assert_array_equal(np.flatnonzero(found), [30, 31])
 
 
 @given(shift=st.floats(-2, 2), sign=st.sampled_from([-1.0, 1.0]))

@@ -15,7 +15,8 @@ NORMAL_SCALE = 1.4826
 """Standard deviation of a normal law over its median absolute deviation."""
 
 BREAK_STEPS = 5.0
-"""A step in time above so many usual steps (islands, flagged stretches) breaks the window of the median."""
+"""A step in time above so many usual steps (islands, flagged stretches) breaks the window of the median,
+unless it cuts off too few points for a median of their own."""
 
 
 def find_spikes(
@@ -25,7 +26,8 @@ def find_spikes(
 
     The departure is measured against the robust scale (median absolute deviation) of the whole pass. Near the
     ends of a stretch, where a centred window does not fit and a slope alone would show as a departure, a value
-    must also depart from the line drawn through the running medians further in.
+    must also depart from the line drawn through the running medians further in. Where a whole pass has hardly
+    more points than a spike, nothing can be told.
 
     Parameters
     ----------
@@ -59,7 +61,7 @@ def find_spikes(
     if values.size == 0:
         return np.zeros(0, dtype=bool)
     half = window // 2
-    first, last = _bounds(_new_stretch(time, passes))
+    first, last = _windows(time, passes, half)
     middle = _running_median(values, first, last, half)
     departure = _departure(values, middle, first, last, half)
     scale = np.empty_like(values)
@@ -68,13 +70,17 @@ def find_spikes(
     return np.asarray(departure > np.maximum(limit * scale, floor))
 
 
-def _new_stretch(time: Floats, passes: Integers) -> Booleans:
-    """Return which points start a stretch that the window does not reach across."""
+def _windows(time: Floats, passes: Integers, half: int) -> tuple[Integers, Integers]:
+    """Return for each point the first and last index that its window may reach to."""
+    # the ends of its unbroken stretch, or of its pass where the stretch is too short to judge itself
     step = np.diff(time)
     new_pass = np.diff(passes) != 0
     usual = step[~new_pass & (step > 0.0)]
     broken = step > BREAK_STEPS * np.median(usual) if usual.size else np.zeros(step.size, dtype=bool)
-    return np.concatenate([[True], new_pass | broken])
+    first, last = _bounds(np.concatenate([[True], new_pass | broken]))
+    pass_first, pass_last = _bounds(np.concatenate([[True], new_pass]))
+    short = last - first < half
+    return np.where(short, pass_first, first), np.where(short, pass_last, last)
 
 
 def _pieces(labels: Integers) -> list[tuple[int, int]]:
