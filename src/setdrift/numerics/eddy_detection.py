@@ -247,8 +247,8 @@ def _measured(
     velocity, length = velocity_along(points, n, setting.flow)
     if np.isnan(velocity):
         speed, fastest_area = np.nan, np.nan
-    vorticity = velocity * length / fastest_area
-    rossby_number = vorticity / float(coriolis_parameter(latitude, setting.earth))
+    planetary = float(coriolis_parameter(latitude, setting.earth)) * fastest_area
+    rossby_number = velocity * length / planetary if planetary != 0.0 else np.nan
     return Eddy(
         longitude,
         latitude,

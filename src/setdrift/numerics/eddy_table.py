@@ -40,7 +40,7 @@ class Eddies:
         Of the circle of the area inside that contour, m; NaN where the velocity is unknown.
     rossby_number : (n,) array
         Mean relative vorticity inside that contour over the Coriolis parameter at the peak; negative for
-        anticyclones. NaN where the velocity is unknown.
+        anticyclones. NaN where the velocity is unknown and on the equator.
     outer_longitude, outer_latitude : (m,) array
         Points of the outer contours, eddy after eddy, degrees; anticlockwise, the first point not repeated.
         Longitudes are continuous along a contour, also where it crosses the seam of a periodic grid.
