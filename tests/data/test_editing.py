@@ -148,6 +148,12 @@ def test_inferred_passes_are_named_by_their_first_second() -> None:
     np.testing.assert_array_equal(number_passes(track, 300.0), expected)
 
 
+def test_passes_that_seem_to_start_in_one_second_stay_apart() -> None:
+    latitude = np.repeat([8.0, 9.0, 8.0, 9.0], 3)
+    track = pass_of(12, latitude=latitude, time=MARCH_FIRST + 0.05 * np.arange(12))
+    assert np.unique(number_passes(track, 300.0)).size == 3
+
+
 def test_cycle_alone_or_pass_alone_is_not_enough() -> None:
     alone = pass_of(5, pass_number=np.full(5, 17))
     np.testing.assert_array_equal(number_passes(alone, 300.0), np.full(5, MARCH_FIRST))

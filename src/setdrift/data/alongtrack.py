@@ -198,7 +198,7 @@ def _believable(time: Floats) -> Floats:
 
 def _flagged(flag: Floats, good: GoodValues) -> NDArray[np.bool_]:
     """Return which flags are not good; a missing flag, or one that is no whole number, is not."""
-    sound = np.isfinite(flag) & (flag == np.rint(flag)) & (abs(flag) < 2.0**53)
+    sound = (flag == np.rint(flag)) & (abs(flag) < 2.0**53)  # no NaN is equal to itself
     bits = np.where(sound, flag, 0.0).astype(np.int64)
     if good.mask is not None:
         return np.asarray(~(sound & ((bits & good.mask) == good.equals)))
