@@ -18,9 +18,6 @@ from setdrift.data.days import from_day_number
 from setdrift.data.netcdf import Floats, find_variable, floats, in_units, opened, seconds_since_1970
 from setdrift.errors import SetdriftError
 
-READING_VERSION = 1
-"""Raised by hand whenever what is read from a file changes."""
-
 DAY_S = 86400.0
 LAST_TIME_S = 230 * 365.25 * DAY_S  # year 2200: times are believed from 1970 to here
 STRAY_SPANS = 10.0  # a time so many spans of its file (5th to 95th percentile) off the median is not believed

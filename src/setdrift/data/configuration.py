@@ -132,6 +132,9 @@ class Mapping(Section):
         default=15, ge=1, le=60, description="observations up to so many days either side are used"
     )
     signal_m: Positive = Field(default=0.10, le=2.0, description="prior standard deviation of the sea level anomaly")
+    large_scale_m: NotNegative = Field(
+        default=0.03, description="prior standard deviation of the part with scales of 500 to 1500 km"
+    )
     zonal_scale_km: Positive | None = Field(
         default=None, description="zero crossing of the covariance; left out: by latitude"
     )
@@ -148,8 +151,8 @@ class Currents(Section):
     """Latitudes, in degrees, of the equatorial band."""
 
     band_degrees: Positive = Field(default=6.0, le=10, description="the equatorial fit uses sea level up to here")
-    blend_from_degrees: Positive = Field(default=3.0, description="pure beta-plane balance up to here")
-    blend_to_degrees: Positive = Field(default=5.0, description="pure f-plane balance from here")
+    blend_from_degrees: Positive = Field(default=4.0, description="pure beta-plane balance up to here")
+    blend_to_degrees: Positive = Field(default=6.0, description="pure f-plane balance from here")
 
     @model_validator(mode="after")
     def _in_order(self) -> Currents:

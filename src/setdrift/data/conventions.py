@@ -215,3 +215,36 @@ DAILY_VARIABLES = (
         "fixed",
     ),
 )
+
+
+@dataclass(frozen=True)
+class Column:
+    """A published property of eddies: one value a detection."""
+
+    name: str
+    units: str
+    long_name: str
+    standard_name: str = ""
+
+    @property
+    def attributes(self) -> dict[str, object]:
+        """CF attributes of the column."""
+        attributes: dict[str, object] = {"long_name": self.long_name, "units": self.units}
+        if self.standard_name:
+            attributes["standard_name"] = self.standard_name
+        return attributes
+
+
+EDDY_COLUMNS = (
+    Column("latitude", "degrees_north", "latitude of the fitted extreme", "latitude"),
+    Column("longitude", "degrees_east", "longitude of the fitted extreme", "longitude"),
+    Column("amplitude", "m", "distance between the fitted extreme and the level of the outer contour"),
+    Column("extremum", "m", "fitted extreme of the sea level"),
+    Column("outer_level", "m", "sea level of the outer contour"),
+    Column("area", "m2", "area inside the outer contour"),
+    Column("equal_area_radius", "m", "radius of the circle with the outer contour's area"),
+    Column("circle_misfit", "1", "area between the outer contour and the circle of its area, over that area"),
+    Column("rotation_speed", "m s-1", "mean speed along the contour where it is greatest"),
+    Column("fastest_rotation_radius", "m", "radius of the circle with the area inside the contour of fastest rotation"),
+    Column("rossby_number", "1", "mean relative vorticity inside that contour over the Coriolis parameter"),
+)

@@ -100,6 +100,8 @@ class DayStore:
 def content_digest(dataset: xr.Dataset) -> str:
     """Return the digest of a dataset's names, values and attributes.
 
+    The attribute `receipt` does not count: it tells what became of the input, which may change no value.
+
     Parameters
     ----------
     dataset : Dataset
@@ -110,7 +112,7 @@ def content_digest(dataset: xr.Dataset) -> str:
     str
         Hexadecimal digest.
     """
-    parts: list[object] = [{str(k): str(v) for k, v in dataset.attrs.items()}]
+    parts: list[object] = [{str(k): str(v) for k, v in dataset.attrs.items() if k != "receipt"}]
     for name in sorted(dataset.variables, key=str):
         variable = dataset.variables[name]
         parts += [str(name), list(variable.dims), variable.values]

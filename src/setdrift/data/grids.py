@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from setdrift.data.configuration import Configuration
 
-Floats = NDArray[np.floating]
+Floats = NDArray[np.float64]
 
 STENCIL_CELLS = 4  # the widest finite difference reaches two cells; a second derivative of it, four
 REACH_DEGREES = 6.0  # observations are used up to so far (in degrees of latitude) outside the padded grid
@@ -63,11 +63,15 @@ def analysis_grid(configuration: Configuration) -> Grid:
     rows = round((box.north - box.south) / box.spacing)
     columns = round(box.width / box.spacing)
     return Grid(
-        box.south + (np.arange(rows) + 0.5) * box.spacing,
-        box.west + (np.arange(columns) + 0.5) * box.spacing,
+        _centres(box.south, rows, box.spacing),
+        _centres(box.west, columns, box.spacing),
         box.spacing,
         box.periodic,
     )
+
+
+def _centres(edge: float, count: int, spacing: float) -> Floats:
+    return np.asarray(edge + (np.arange(count) + 0.5) * spacing, dtype=np.float64)
 
 
 def working_grid(configuration: Configuration) -> Grid:

@@ -3,10 +3,14 @@
 from __future__ import annotations
 
 import datetime as dt
+from collections.abc import Callable, Iterable
 from pathlib import Path
 from typing import Any
 
+import xarray as xr
+
 from setdrift.data.configuration import Configuration
+from setdrift.data.day_store import DayStore, refresh_days
 from setdrift.data.days import Block, blocks_between, days_between
 from setdrift.data.records import read_record, write_record
 from setdrift.errors import SetdriftError
@@ -17,8 +21,16 @@ def receipt_path(configuration: Configuration, stage: str, block: Block) -> Path
     return configuration.work / stage / f"{block.label}.json"
 
 
-def write_receipt(configuration: Configuration, stage: str, block: Block, contents: dict[str, str]) -> dict[str, Any]:
-    """Write the receipt of a job.
+def refresh_block(
+    configuration: Configuration,
+    stage: str,
+    block: Block,
+    days: Iterable[dt.date],
+    made_from: Callable[[dt.date], str],
+    make: Callable[[dt.date], xr.Dataset],
+    announce: Callable[[str], None],
+) -> dict[str, Any]:
+    """Make the days of a stage's block that are missing or out of date, and write the receipt.
 
     Parameters
     ----------
@@ -27,15 +39,22 @@ def write_receipt(configuration: Configuration, stage: str, block: Block, conten
     stage : str
         The stage's folder.
     block : Block
-        The days the job handled.
-    contents : dict
-        Content digest of each day.
+        The days the job handles.
+    days : iterable of date
+        Those of them that are wanted.
+    made_from : callable
+        Digest of all a day depends on.
+    make : callable
+        Computes a day.
+    announce : callable
+        Told of each day, for the log.
 
     Returns
     -------
     dict
         The receipt.
     """
+    contents = refresh_days(DayStore(configuration.work / stage), days, made_from, make, announce)
     receipt = {"stage": stage, "block": block.label, "days": {day: {"content": c} for day, c in contents.items()}}
     write_record(receipt_path(configuration, stage, block), receipt)
     return receipt

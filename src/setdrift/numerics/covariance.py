@@ -20,55 +20,75 @@ _LATITUDES = np.array([0.0, 5.0, 10.0, 20.0, 30.0, 45.0, 60.0, 90.0])
 _ZONAL_KM = np.array([400.0, 350.0, 290.0, 230.0, 190.0, 150.0, 120.0, 100.0])
 _MERIDIONAL_KM = np.array([270.0, 260.0, 240.0, 210.0, 180.0, 145.0, 120.0, 100.0])
 
+# The large-scale part, e-folding distances and time of a Gaussian: common practice, no source. It stands for
+# equatorial waves and basin-wide change, which the mesoscale covariance has no room for.
+LARGE_ZONAL_KM = 1500.0
+LARGE_MERIDIONAL_KM = 500.0
+LARGE_TIME_DAYS = 15.0
+
 _GRAVITY_WAVE_SPEED = 2.5  # m s-1, first baroclinic mode of the tropics: common practice, no source
-_LARGEST_DRIFT = 0.25  # m s-1: eddies near the equator do not follow the long-wave speed
+_LARGEST_DRIFT = 0.15  # m s-1: eddies near the equator do not follow the long-wave speed
 _SECONDS_PER_DAY = 86400.0
 
 
 @dataclass(frozen=True)
 class Covariance:
-    """Sea level covariance about one place, stationary in the frame of the drifting pattern.
+    """Sea level covariance about one place: mesoscale, drifting with its pattern, plus large-scale.
 
     Attributes
     ----------
-    variance : float
-        Prior variance, m2.
+    variance, large_variance : float
+        Prior variance of either part, m2.
     zonal_scale, meridional_scale : float
-        Distance of the zero crossing, km.
+        Distance of the mesoscale part's zero crossing, km.
     time_scale : float
-        e-folding time, days.
+        e-folding time of the mesoscale part, days.
     zonal_drift : float
-        Eastward drift, km a day.
+        Eastward drift of the mesoscale part, km a day.
     """
 
     variance: float
+    large_variance: float
     zonal_scale: float
     meridional_scale: float
     time_scale: float
     zonal_drift: float
 
-    def scaled(self, x: ArrayLike, y: ArrayLike, t: ArrayLike) -> tuple[Floats, Floats, Floats]:
-        """Return coordinates in which the covariance is isotropic and the pattern stands still.
+    @property
+    def prior_variance(self) -> float:
+        """Variance of the sea level, m2."""
+        return self.variance + self.large_variance
+
+    def scaled(self, x: ArrayLike, y: ArrayLike, t: ArrayLike) -> Floats:
+        """Return coordinates in which both parts are isotropic and the mesoscale pattern stands still.
 
         Parameters
         ----------
-        x, y, t : array
-            Distance east and north (km) and time (days) from any origin; they broadcast together.
+        x, y, t : (n,) array
+            Distance east and north (km) and time (days) from any origin.
 
         Returns
         -------
-        east, north, time : array
-            Scaled coordinates; `correlation` takes their squared differences.
+        (6, n) array
+            East, north and time scaled for the mesoscale part, then for the large-scale part.
         """
-        t = np.asarray(t, dtype=float)
-        east = (np.asarray(x) - self.zonal_drift * t) * (ZERO_CROSSING / self.zonal_scale)
-        north = np.asarray(y) * (ZERO_CROSSING / self.meridional_scale)
-        return east, north, t / self.time_scale
+        x, y, t = (np.asarray(part, dtype=float) for part in (x, y, t))
+        return np.stack(
+            (
+                (x - self.zonal_drift * t) * (ZERO_CROSSING / self.zonal_scale),
+                y * (ZERO_CROSSING / self.meridional_scale),
+                t / self.time_scale,
+                x / LARGE_ZONAL_KM,
+                y / LARGE_MERIDIONAL_KM,
+                t / LARGE_TIME_DAYS,
+            )
+        )
 
     def __call__(self, x: ArrayLike, y: ArrayLike, t: ArrayLike) -> Floats:
-        """Return the covariance (m2) at lags east (km), north (km) and in time (days)."""
-        east, north, time = self.scaled(x, y, t)
-        return np.asarray(self.variance * correlation(east * east + north * north, time * time))
+        """Return the covariance (m2) at lags east (km), north (km) and in time (days), of one shape."""
+        squared = self.scaled(x, y, t) ** 2
+        mesoscale = self.variance * correlation(squared[0] + squared[1], squared[2])
+        return np.asarray(mesoscale + self.large_variance * np.exp(-squared[3] - squared[4] - squared[5]))
 
 
 def correlation(distance_squared: ArrayLike, time_squared: ArrayLike) -> Floats:
@@ -100,8 +120,8 @@ class CovarianceModel:
 
     Attributes
     ----------
-    standard_deviation : float
-        Prior standard deviation, m.
+    standard_deviation, large_standard_deviation : float
+        Prior standard deviation of the mesoscale and of the large-scale part, m.
     time_scale : float
         Days.
     zonal_scale, meridional_scale : float or None
@@ -112,9 +132,15 @@ class CovarianceModel:
 
     standard_deviation: float
     time_scale: float
+    large_standard_deviation: float = 0.0
     zonal_scale: float | None = None
     meridional_scale: float | None = None
     zonal_drift: float | None = None
+
+    @property
+    def prior_standard_deviation(self) -> float:
+        """Standard deviation of the sea level, m."""
+        return float(np.hypot(self.standard_deviation, self.large_standard_deviation))
 
     def at(self, latitude: float) -> Covariance:
         """Return the covariance at a latitude in degrees."""
@@ -122,6 +148,7 @@ class CovarianceModel:
         drift = long_wave_drift(latitude) if self.zonal_drift is None else self.zonal_drift
         return Covariance(
             self.standard_deviation**2,
+            self.large_standard_deviation**2,
             self.zonal_scale or float(zonal),
             self.meridional_scale or float(meridional),
             self.time_scale,
@@ -139,7 +166,7 @@ def long_wave_drift(latitude: ArrayLike) -> Floats:
     """Eastward drift of sea level patterns: that of long baroclinic Rossby waves, bounded.
 
     The mid-latitude speed -beta c^2 / f^2 is joined to the equatorial first mode's -c/3 by adding 3 beta c to f^2,
-    and bounded at 0.25 m/s (common practice, no source).
+    and bounded at 0.15 m/s (common practice, no source).
 
     Parameters
     ----------

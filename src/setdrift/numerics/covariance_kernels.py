@@ -15,19 +15,23 @@ Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
 
 
-@njit("f8(f8, f8)", cache=True, inline="always")
-def _correlation(distance_squared: float, time_squared: float) -> float:
-    s = math.sqrt(distance_squared)
-    shape = 1.0 + s + distance_squared * (1.0 - s) / 6.0
-    return shape * math.exp(-s - time_squared)
+@njit("f8(f8[:, ::1], i8, f8[:, ::1], i8, f8, f8)", cache=True, inline="always")
+def _covariance(a: Floats, i: int, b: Floats, j: int, variance: float, large_variance: float) -> float:
+    east, north, time = a[0, i] - b[0, j], a[1, i] - b[1, j], a[2, i] - b[2, j]
+    s_squared = east * east + north * north
+    s = math.sqrt(s_squared)
+    value: float = variance * (1.0 + s + s_squared * (1.0 - s) / 6.0) * math.exp(-s - time * time)
+    if large_variance > 0.0:
+        east, north, time = a[3, i] - b[3, j], a[4, i] - b[4, j], a[5, i] - b[5, j]
+        value += large_variance * math.exp(-east * east - north * north - time * time)
+    return value
 
 
-@njit("f8[:, ::1](f8[::1], f8[::1], f8[::1], f8, f8[::1], i8[::1], i8[::1], f8, f8)", cache=True)
+@njit("f8[:, ::1](f8[:, ::1], f8, f8, f8[::1], i8[::1], i8[::1], f8, f8)", cache=True)
 def fill_observation_covariance(
-    east: Floats,
-    north: Floats,
-    time: Floats,
+    places: Floats,
     variance: float,
+    large_variance: float,
     noise_variance: Floats,
     altimeter: Integers,
     pass_number: Integers,
@@ -38,10 +42,10 @@ def fill_observation_covariance(
 
     Parameters
     ----------
-    east, north, time : (n,) array
+    places : (6, n) array
         Scaled coordinates (`Covariance.scaled`).
-    variance : float
-        Signal variance, m2.
+    variance, large_variance : float
+        Signal variance of the mesoscale and the large-scale part, m2.
     noise_variance : (n,) array
         White noise, m2.
     altimeter, pass_number : (n,) integer array
@@ -54,12 +58,11 @@ def fill_observation_covariance(
     (n, n) array
         m2; only the upper triangle is filled, the rest is undefined.
     """
-    n = east.size
+    n = places.shape[1]
     matrix = np.empty((n, n))
     for i in range(n):
         for j in range(i, n):
-            de, dn, dt = east[i] - east[j], north[i] - north[j], time[i] - time[j]
-            value = variance * _correlation(de * de + dn * dn, dt * dt)
+            value = _covariance(places, i, places, j, variance, large_variance)
             if altimeter[i] == altimeter[j]:
                 value += bias_variance
                 if pass_number[i] == pass_number[j]:
@@ -69,27 +72,20 @@ def fill_observation_covariance(
     return matrix
 
 
-@njit("f8[:, ::1](f8[::1], f8[::1], f8[::1], f8[::1], f8[::1], f8[::1], f8, f8[::1])", cache=True)
+@njit("f8[:, ::1](f8[:, ::1], f8[:, ::1], f8, f8, f8[::1])", cache=True)
 def fill_cross_covariance(
-    east: Floats,
-    north: Floats,
-    time: Floats,
-    point_east: Floats,
-    point_north: Floats,
-    point_time: Floats,
-    variance: float,
-    value: Floats,
+    places: Floats, points: Floats, variance: float, large_variance: float, value: Floats
 ) -> Floats:
     """Covariance of the sea level at points with the observations, and the observed values as a last row.
 
     Parameters
     ----------
-    east, north, time : (n,) array
+    places : (6, n) array
         Scaled coordinates of the observations.
-    point_east, point_north, point_time : (m,) array
+    points : (6, m) array
         Scaled coordinates of the points.
-    variance : float
-        Signal variance, m2.
+    variance, large_variance : float
+        Signal variance of the mesoscale and the large-scale part, m2.
     value : (n,) array
         Observed values, m.
 
@@ -98,11 +94,10 @@ def fill_cross_covariance(
     (m + 1, n) array
         m2 in the first m rows, m in the last.
     """
-    m, n = point_east.size, east.size
+    m, n = points.shape[1], places.shape[1]
     rows = np.empty((m + 1, n))
     for i in range(m):
         for j in range(n):
-            de, dn, dt = point_east[i] - east[j], point_north[i] - north[j], point_time[i] - time[j]
-            rows[i, j] = variance * _correlation(de * de + dn * dn, dt * dt)
+            rows[i, j] = _covariance(points, i, places, j, variance, large_variance)
     rows[m] = value
     return rows

@@ -25,6 +25,12 @@ NEAR_REACH = 0.5
 """Fine means are taken within this many zero-crossing scales of the tile."""
 FAR_REACH = 2.0
 """Coarse means are taken within this many zero-crossing scales of the tile."""
+FINE_LENGTH = 0.15
+"""Length of a fine mean in zero-crossing scales."""
+COARSENESS = 4
+"""Fine means to a coarse one."""
+
+_GROUND_SPEED = 6.7  # km s-1 of a satellite some 1000 km up; only decides how many points make a mean
 
 
 @dataclass(frozen=True)
@@ -43,8 +49,6 @@ class MappingSettings:
         Variance of the bias of each altimeter, m2.
     tile_degrees : float
         Height of a tile.
-    fine_seconds, coarse_seconds : float
-        Length along the pass of the means used near a tile and farther off; the second a multiple of the first.
     """
 
     model: CovarianceModel
@@ -52,8 +56,6 @@ class MappingSettings:
     long_wave_variance: float = 0.0
     bias_variance: float = 0.0
     tile_degrees: float = 2.0
-    fine_seconds: float = 3.0
-    coarse_seconds: float = 12.0
 
 
 @dataclass(frozen=True)
@@ -80,14 +82,15 @@ class ObservationPool:
     ----------
     observations : SeaLevelObservations
         The observations of the window.
-    settings : MappingSettings
-        Lengths of the means.
+    seconds : int
+        Length along the pass of a fine mean; coarse ones are `COARSENESS` times as long.
     """
 
-    def __init__(self, observations: SeaLevelObservations, settings: MappingSettings) -> None:
-        self.fine = average_along_pass(observations, settings.fine_seconds)
-        self.coarse = average_along_pass(self.fine, settings.coarse_seconds)
-        self._first_fine = _first_members(self.fine, settings.coarse_seconds)
+    def __init__(self, observations: SeaLevelObservations, seconds: int) -> None:
+        coarse_seconds = seconds * COARSENESS
+        self.fine = average_along_pass(observations, seconds)
+        self.coarse = average_along_pass(self.fine, coarse_seconds)
+        self._first_fine = _first_members(self.fine, coarse_seconds)
         self._tree = cKDTree(_unit_vectors(self.coarse.longitude, self.coarse.latitude))
 
     def near(self, longitude: float, latitude: float, distance: float) -> NDArray[np.int64]:
@@ -145,7 +148,7 @@ def map_sea_level(
     """
     if sea.shape != (latitude.size, longitude.size):
         raise ValueError(f"sea: must have the grid's shape {(latitude.size, longitude.size)}, found {sea.shape}")
-    pool = ObservationPool(observations.take(np.abs(observations.day - day) <= settings.window), settings)
+    pools = _Pools(observations.take(np.abs(observations.day - day) <= settings.window))
     estimate, error, total = np.zeros(sea.shape), np.zeros(sea.shape), np.zeros(sea.shape)
     count, heaviest = np.zeros(sea.shape, dtype=np.int32), np.zeros(sea.shape)
     for tile in tiles_over(latitude, longitude, settings.tile_degrees):
@@ -154,7 +157,7 @@ def map_sea_level(
             continue
         weight = tile.weight[rows, columns]
         points = tile.rows[rows], tile.columns[columns]
-        value, deviation, used = _solve_tile(pool, tile, latitude[points[0]], longitude[points[1]], day, settings)
+        value, deviation, used = _solve_tile(pools, tile, latitude[points[0]], longitude[points[1]], day, settings)
         estimate[points] += weight * value
         error[points] += weight * deviation
         total[points] += weight
@@ -166,43 +169,57 @@ def map_sea_level(
         return SeaLevelMap(estimate / total, error / total, count)
 
 
+class _Pools:
+    """Pools by the length of their means: tiles with longer scales need fewer of them."""
+
+    def __init__(self, observations: SeaLevelObservations) -> None:
+        self._observations = observations
+        self._pools: dict[int, ObservationPool] = {}
+
+    def suited_to(self, covariance: Covariance) -> ObservationPool:
+        shortest = min(covariance.zonal_scale, covariance.meridional_scale)
+        seconds = max(1, int(FINE_LENGTH * shortest / _GROUND_SPEED))
+        if seconds not in self._pools:
+            self._pools[seconds] = ObservationPool(self._observations, seconds)
+        return self._pools[seconds]
+
+
 def _solve_tile(
-    pool: ObservationPool, tile: Tile, latitude: Floats, longitude: Floats, day: float, settings: MappingSettings
+    pools: _Pools, tile: Tile, latitude: Floats, longitude: Floats, day: float, settings: MappingSettings
 ) -> tuple[Floats, Floats, int]:
     covariance = settings.model.at(tile.latitude)
-    chosen = _choose(pool, tile, covariance, day, settings.window)
+    chosen = _choose(pools.suited_to(covariance), tile, covariance, day, settings.window)
     if chosen.size == 0:
-        return np.zeros(latitude.size), np.full(latitude.size, np.sqrt(covariance.variance)), 0
-    at_points = _scaled_positions(tile, covariance, longitude, latitude, np.zeros(latitude.size))
-    at_observations = _scaled_positions(tile, covariance, chosen.longitude, chosen.latitude, chosen.day - day)
+        return np.zeros(latitude.size), np.full(latitude.size, np.sqrt(covariance.prior_variance)), 0
+    points = _scaled_places(tile, covariance, longitude, latitude, np.zeros(latitude.size))
+    places = _scaled_places(tile, covariance, chosen.longitude, chosen.latitude, chosen.day - day)
+    variances = covariance.variance, covariance.large_variance
     matrix = fill_observation_covariance(
-        *at_observations,
-        covariance.variance,
+        places,
+        *variances,
         chosen.noise_variance,
         chosen.altimeter,
         chosen.pass_number,
         settings.long_wave_variance,
         settings.bias_variance,
     )
-    right_hand_sides = fill_cross_covariance(*at_observations, *at_points, covariance.variance, chosen.value)
     # the kernels fill C-ordered arrays; LAPACK sees their transposes, so the upper triangle is its lower one
     factor, failed = lapack.dpotrf(matrix.T, lower=True, clean=False, overwrite_a=True)
     if failed:
         raise ValueError(
             f"observations: their covariance is singular near {tile.latitude:g} N {tile.longitude:g} E (row {failed})"
         )
+    right_hand_sides = fill_cross_covariance(places, points, *variances, chosen.value)
     solved, _ = lapack.dtrtrs(factor, right_hand_sides.T, lower=True, overwrite_b=True)
     weights, values = solved[:, :-1], solved[:, -1]
     explained = np.einsum("ij,ij->j", weights, weights)
-    return values @ weights, np.sqrt(np.maximum(covariance.variance - explained, 0.0)), int(chosen.weight.sum())
+    error = np.sqrt(np.maximum(covariance.prior_variance - explained, 0.0))
+    return values @ weights, error, int(chosen.weight.sum())
 
 
-def _scaled_positions(
-    tile: Tile, covariance: Covariance, longitude: Floats, latitude: Floats, lag: Floats
-) -> tuple[Floats, Floats, Floats]:
+def _scaled_places(tile: Tile, covariance: Covariance, longitude: Floats, latitude: Floats, lag: Floats) -> Floats:
     x, y = to_plane(longitude, latitude, tile.longitude, tile.latitude)
-    east, north, time = covariance.scaled(x, y, lag)
-    return np.ascontiguousarray(east), np.ascontiguousarray(north), np.ascontiguousarray(time)
+    return np.ascontiguousarray(covariance.scaled(x, y, lag), dtype=np.float64)
 
 
 def _choose(

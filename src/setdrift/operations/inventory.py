@@ -15,7 +15,8 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from setdrift.data.alongtrack import READING_VERSION, read_time_span
+from setdrift.data.algorithms import VERSIONS
+from setdrift.data.alongtrack import read_time_span
 from setdrift.data.configuration import Altimeter, Configuration
 from setdrift.data.days import Block, blocks_between, days_between
 from setdrift.data.digests import digest, file_digest
@@ -191,7 +192,7 @@ def _is_regular(path: Path) -> bool:
 def _of_altimeter(
     name: str, altimeter: Altimeter, paths: Iterable[Path], scan: _Scan, announce: Announce
 ) -> list[InputFile]:
-    key = f"{name} {digest(READING_VERSION, altimeter.model_dump(mode='json', exclude={'files', 'noise_m'}))}"
+    key = f"{name} {digest(VERSIONS['observations'], altimeter.model_dump(mode='json', exclude={'files', 'noise_m'}))}"
     files: dict[str, InputFile] = {}
     for path in paths:
         try:

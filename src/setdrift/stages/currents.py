@@ -8,17 +8,15 @@ from typing import Any
 
 import xarray as xr
 
+from setdrift.data.algorithms import settings_digest
 from setdrift.data.configuration import Configuration, Currents
-from setdrift.data.day_store import DayStore, refresh_days
+from setdrift.data.day_store import DayStore
 from setdrift.data.days import Block
 from setdrift.data.digests import digest
 from setdrift.data.grids import working_grid
-from setdrift.data.receipts import analysed_period, contents_between, write_receipt
+from setdrift.data.receipts import analysed_period, contents_between, refresh_block
 from setdrift.numerics.derivatives import relative_vorticity
 from setdrift.numerics.geostrophy import EquatorialBand, geostrophic_velocity, rossby_number
-
-ALGORITHM_VERSION = 1
-"""Raised by hand whenever the stage's results change."""
 
 
 def currents_block(configuration: Configuration, block: Block, announce: Callable[[str], None]) -> dict[str, Any]:
@@ -45,17 +43,17 @@ def currents_block(configuration: Configuration, block: Block, announce: Callabl
     topographies = DayStore(configuration.work / "dynamic_topography")
     periodic = working_grid(configuration).periodic
     band = equatorial_band(configuration.currents)
+    common = settings_digest(configuration, "currents")
 
     def made_from(day: dt.date) -> str:
-        return digest(ALGORITHM_VERSION, configuration.currents, mapped[day], added[day])
+        return digest(common, mapped[day], added[day])
 
     def make(day: dt.date) -> xr.Dataset:
         return currents(
             topographies.load(day)["dynamic_topography"], maps.load(day)["sea_level_anomaly"], band, periodic
         )
 
-    contents = refresh_days(DayStore(configuration.work / "currents"), days, made_from, make, announce)
-    return write_receipt(configuration, "currents", block, contents)
+    return refresh_block(configuration, "currents", block, days, made_from, make, announce)
 
 
 def currents(topography: xr.DataArray, anomaly: xr.DataArray, band: EquatorialBand, periodic: bool) -> xr.Dataset:

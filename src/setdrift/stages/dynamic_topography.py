@@ -8,15 +8,13 @@ from typing import Any
 
 import xarray as xr
 
+from setdrift.data.algorithms import settings_digest
 from setdrift.data.configuration import Configuration
-from setdrift.data.day_store import DayStore, refresh_days
+from setdrift.data.day_store import DayStore
 from setdrift.data.days import Block
 from setdrift.data.digests import digest
 from setdrift.data.fixed import fixed_digest, load_fixed_fields
-from setdrift.data.receipts import analysed_period, contents_between, write_receipt
-
-ALGORITHM_VERSION = 1
-"""Raised by hand whenever the stage's results change."""
+from setdrift.data.receipts import analysed_period, contents_between, refresh_block
 
 
 def add_mean_block(configuration: Configuration, block: Block, announce: Callable[[str], None]) -> dict[str, Any]:
@@ -38,17 +36,17 @@ def add_mean_block(configuration: Configuration, block: Block, announce: Callabl
     """
     days = block.days_within(*analysed_period(configuration))
     mapped = contents_between(configuration, "maps", days[0], days[-1])
-    mean_digest = fixed_digest(configuration, "mean_dynamic_topography")
+    common = digest(
+        settings_digest(configuration, "dynamic_topography"), fixed_digest(configuration, "mean_dynamic_topography")
+    )
     maps = DayStore(configuration.work / "maps")
     mean = load_fixed_fields(configuration)["mean_dynamic_topography"]
 
     def made_from(day: dt.date) -> str:
-        return digest(ALGORITHM_VERSION, mapped[day], mean_digest)
+        return digest(common, mapped[day])
 
     def make(day: dt.date) -> xr.Dataset:
         anomaly = maps.load(day)["sea_level_anomaly"]
         return xr.Dataset({"dynamic_topography": (anomaly.dims, anomaly.values + mean.values)}, coords=anomaly.coords)
 
-    store = DayStore(configuration.work / "dynamic_topography")
-    contents = refresh_days(store, days, made_from, make, announce)
-    return write_receipt(configuration, "dynamic_topography", block, contents)
+    return refresh_block(configuration, "dynamic_topography", block, days, made_from, make, announce)

@@ -9,20 +9,18 @@ from typing import Any
 import numpy as np
 import xarray as xr
 
+from setdrift.data.algorithms import settings_digest
 from setdrift.data.configuration import Configuration
 from setdrift.data.conventions import UNOBSERVED_LIMIT, MapQuality
-from setdrift.data.day_store import DayStore, refresh_days
+from setdrift.data.day_store import DayStore
 from setdrift.data.days import Block, day_number, days_between
 from setdrift.data.digests import digest
 from setdrift.data.fixed import fixed_digest, load_fixed_fields
 from setdrift.data.grids import Grid, working_grid
-from setdrift.data.receipts import analysed_period, contents_between, write_receipt
+from setdrift.data.receipts import analysed_period, contents_between, refresh_block
 from setdrift.numerics.covariance import CovarianceModel
 from setdrift.numerics.optimal_interpolation import MappingSettings, map_sea_level
 from setdrift.numerics.superobservations import SeaLevelObservations
-
-ALGORITHM_VERSION = 1
-"""Raised by hand whenever the stage's results change."""
 
 NOON = 0.5  # maps are snapshots at 12:00 UTC
 
@@ -48,22 +46,13 @@ def map_block(configuration: Configuration, block: Block, announce: Callable[[st
     window = dt.timedelta(days=configuration.mapping.window_days)
     observed = contents_between(configuration, "observations", days[0] - window, days[-1] + window)
     grid = working_grid(configuration)
-    noise = {name: altimeter.noise_m for name, altimeter in configuration.altimeters.items()}
-    common = digest(
-        ALGORITHM_VERSION,
-        configuration.mapping,
-        noise,
-        grid.latitude,
-        grid.longitude,
-        fixed_digest(configuration, "land_fraction"),
-    )
+    common = digest(settings_digest(configuration, "maps"), fixed_digest(configuration, "land_fraction"))
 
     def made_from(day: dt.date) -> str:
         return digest(common, [observed[d] for d in days_between(day - window, day + window)])
 
     mapper = _Mapper(configuration, grid)
-    contents = refresh_days(DayStore(configuration.work / "maps"), days, made_from, mapper.map_day, announce)
-    return write_receipt(configuration, "maps", block, contents)
+    return refresh_block(configuration, "maps", block, days, made_from, mapper.map_day, announce)
 
 
 class _Mapper:
@@ -84,7 +73,7 @@ class _Mapper:
         mapped = map_sea_level(
             self._window(day), self._grid.latitude, self._grid.longitude, self._sea, moment, self._settings
         )
-        prior = self._settings.model.standard_deviation
+        prior = self._settings.model.prior_standard_deviation
         unobserved = mapped.error > UNOBSERVED_LIMIT * prior
         dims = ("latitude", "longitude")
         return xr.Dataset(
@@ -126,6 +115,7 @@ def mapping_settings(configuration: Configuration) -> MappingSettings:
     model = CovarianceModel(
         chosen.signal_m,
         chosen.time_scale_days,
+        chosen.large_scale_m,
         chosen.zonal_scale_km,
         chosen.meridional_scale_km,
         chosen.zonal_drift_km_per_day,

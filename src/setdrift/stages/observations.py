@@ -13,7 +13,8 @@ from typing import Any
 import numpy as np
 import xarray as xr
 
-from setdrift.data.alongtrack import DAY_S, READING_VERSION, AlongTrack, concatenate, read_alongtrack
+from setdrift.data.algorithms import VERSIONS
+from setdrift.data.alongtrack import DAY_S, AlongTrack, concatenate, read_alongtrack
 from setdrift.data.ancillary import land_mask
 from setdrift.data.configuration import Configuration
 from setdrift.data.day_store import DayStore, refresh_days
@@ -25,9 +26,6 @@ from setdrift.data.netcdf import is_passing_trouble
 from setdrift.data.receipts import receipt_path
 from setdrift.data.records import read_record, write_record
 from setdrift.errors import SetdriftError
-
-ALGORITHM_VERSION = 1
-"""Raised by hand whenever the stage's results change."""
 
 Entry = dict[str, str]
 
@@ -89,8 +87,7 @@ class _Gatherer:
         self._tracks: dict[str, AlongTrack | str] = {}
         land = configuration.land or configuration.mean_dynamic_topography
         self._common = digest(
-            ALGORITHM_VERSION,
-            READING_VERSION,
+            VERSIONS["observations"],
             list(configuration.altimeters),
             configuration.editing,
             dataclasses.asdict(self._area),

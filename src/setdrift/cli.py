@@ -1,0 +1,121 @@
+"""The `setdrift` command."""
+
+from __future__ import annotations
+
+import argparse
+import sys
+from collections.abc import Sequence
+from pathlib import Path
+
+from setdrift import __version__
+from setdrift.errors import SetdriftError
+
+# Everything else is imported where it is used, so that `setdrift --help` answers at once.
+
+FAILED, MISUSED = 1, 2
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Run the command.
+
+    Parameters
+    ----------
+    arguments : sequence of str, optional
+        Words after the command's name; those of the process when left out.
+
+    Returns
+    -------
+    int
+        0 where all went well, 1 where the work failed, 2 where the words were wrong.
+    """
+    chosen = _parser().parse_args(arguments)
+    try:
+        chosen.action(chosen)
+    except SetdriftError as error:
+        print(f"setdrift: {error}", file=sys.stderr)
+        return FAILED
+    except KeyboardInterrupt:
+        print("setdrift: stopped from the keyboard; run the same command to go on", file=sys.stderr)
+        return FAILED
+    return 0
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = argparse.ArgumentParser(
+        prog="setdrift",
+        description="Daily surface currents and eddies from along-track satellite sea level.",
+        epilog="The whole chain is run by: snakemake --cores 2 --configfile CONFIG",
+    )
+    parser.add_argument("--version", action="version", version=f"setdrift {__version__}")
+    commands = parser.add_subparsers(required=True, metavar="COMMAND")
+
+    check = commands.add_parser("check", help="check a configuration and say what it asks for")
+    check.add_argument("config", type=Path, help="configuration file")
+    check.set_defaults(action=_check)
+
+    job = commands.add_parser("job", help="run one rule of the workflow (the workflow calls this)")
+    job.add_argument("rule", help="name of the rule")
+    job.add_argument("config", type=Path, help="configuration file")
+    job.add_argument("--block", help="first day of the block of days, YYYY-MM-DD")
+    job.add_argument("--log", type=Path, help="file that the job's lines are added to")
+    job.set_defaults(action=_job)
+
+    verify = commands.add_parser("verify", help="compare the published maps and currents with a known truth")
+    verify.add_argument("config", type=Path, help="configuration file")
+    verify.add_argument("--truth", type=Path, required=True, help="gridded file with the true fields, by standard name")
+    verify.set_defaults(action=_verify)
+
+    prepare = commands.add_parser("prepare", help="compile the fast loops now, so that no first run seems to hang")
+    prepare.set_defaults(action=_prepare)
+    return parser
+
+
+def _check(chosen: argparse.Namespace) -> None:
+    from setdrift.data.configuration import load_configuration
+    from setdrift.data.grids import analysis_grid, working_grid
+
+    configuration = load_configuration(chosen.config)
+    rows, columns = analysis_grid(configuration).shape
+    working_rows, working_columns = working_grid(configuration).shape
+    print(f"{chosen.config} is sound")
+    print(f"  analysis    {configuration.analysis}, {configuration.period.start} to {configuration.period.end}")
+    print(f"  grid        {rows} x {columns} points, worked on as {working_rows} x {working_columns}")
+    for name, altimeter in configuration.altimeters.items():
+        print(f"  altimeter   {name}: {configuration.resolve(altimeter.files)}")
+    print(f"  products    {configuration.products}")
+    print(f"next: snakemake --cores 2 --configfile {chosen.config}")
+
+
+def _job(chosen: argparse.Namespace) -> None:
+    from setdrift.data.configuration import load_configuration
+    from setdrift.data.days import Block
+    from setdrift.operations.jobs import RULES, Job, run_job
+
+    if chosen.rule not in RULES:
+        raise SetdriftError(f"job {chosen.rule}", "is not a rule", f"choose one of {', '.join(RULES)}")
+    configuration = load_configuration(chosen.config)
+    block = None
+    if chosen.block is not None:
+        try:
+            block = Block.named(chosen.block, configuration.block_days)
+        except ValueError as error:
+            raise SetdriftError(f"--block {chosen.block}", "is not a day", "write it as YYYY-MM-DD") from error
+    run_job(Job(configuration, chosen.rule, block), chosen.log, lambda line: print(line, flush=True))
+
+
+def _verify(chosen: argparse.Namespace) -> None:
+    from setdrift.data.configuration import load_configuration
+    from setdrift.operations.verification import verification_lines
+
+    for line in verification_lines(load_configuration(chosen.config), chosen.truth):
+        print(line)
+
+
+def _prepare(_: argparse.Namespace) -> None:
+    from setdrift.operations.preparation import compile_kernels
+
+    compile_kernels(lambda line: print(line, flush=True))
+
+
+if __name__ == "__main__":
+    sys.exit(main())
