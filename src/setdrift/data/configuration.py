@@ -3,15 +3,38 @@
 from __future__ import annotations
 
 import datetime as dt
-import difflib
 import os
+import re
 from pathlib import Path
 from typing import Annotated, Any, Literal
 
-import yaml
-from pydantic import BaseModel, ConfigDict, Field, ValidationError, field_validator, model_validator
+from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, ValidationError, field_validator, model_validator
 
+from setdrift.data.configuration_errors import explained
+from setdrift.data.yaml_files import read_yaml
 from setdrift.errors import SetdriftError
+
+FIRST_DAY, LAST_DAY = dt.date(1970, 1, 1), dt.date(2199, 12, 31)
+"""Days that observations are believed of."""
+
+
+def _day(value: Any) -> Any:
+    """Return a date written as YYYY-MM-DD; other notations, and numbers, could mean another day."""
+    try:
+        day = dt.date.fromisoformat(value if re.fullmatch(r"\d{4}-\d{2}-\d{2}", value) else "")
+    except (TypeError, ValueError) as error:
+        raise ValueError(f"{value!r} is not a day; write it as YYYY-MM-DD") from error
+    if not FIRST_DAY <= day <= LAST_DAY:
+        raise ValueError(f"{value!r} is out of range; give a day from {FIRST_DAY} to {LAST_DAY}")
+    return day
+
+
+def _day_or_latest(value: Any) -> Any:
+    try:
+        return value if value == "latest" else _day(value)
+    except ValueError as error:
+        raise ValueError(f"{error}, or latest") from error
+
 
 Positive = Annotated[float, Field(gt=0)]
 NotNegative = Annotated[float, Field(ge=0)]
@@ -23,18 +46,31 @@ class Section(BaseModel):
 
     model_config = ConfigDict(extra="forbid", frozen=True, allow_inf_nan=False)
 
+    @field_validator("*", mode="before")
+    @classmethod
+    def _no_truth_value(cls, value: Any) -> Any:
+        # YAML reads a bare yes, no, on or off as a truth value, which would pass for the number 1 or 0
+        if isinstance(value, bool):
+            raise ValueError("holds yes or no, on or off; write a number, or put the text in quotes")
+        return value
+
 
 class Period(Section):
     """Days to analyse, both ends included."""
 
-    start: dt.date
-    end: dt.date | Literal["latest"] = Field(description="a date, or 'latest': the newest day with observations")
+    start: Annotated[dt.date, BeforeValidator(_day)]
+    end: Annotated[dt.date | Literal["latest"], BeforeValidator(_day_or_latest)] = Field(
+        description="a date, or 'latest': the newest day with observations"
+    )
 
     @model_validator(mode="after")
     def _in_order(self) -> Period:
         if self.end != "latest" and self.end < self.start:
-            raise ValueError(f"start ({self.start}) must not be after end ({self.end})")
+            raise ValueError(f"start ({self.start}) must not be after end ({self.end}); change one of them")
         return self
+
+
+_ROUNDING = 1e-9
 
 
 class GridBox(Section):
@@ -49,13 +85,18 @@ class GridBox(Section):
     @model_validator(mode="after")
     def _sound(self) -> GridBox:
         if self.south >= self.north:
-            raise ValueError(f"south ({self.south}) must be below north ({self.north})")
+            raise ValueError(f"south ({self.south}) must be below north ({self.north}); change one of them")
+        if self.west == self.east or self.east - self.west > 360.0:
+            raise ValueError(
+                f"west ({self.west}) to east ({self.east}) is no box; "
+                "a whole turn is written as west: -180, east: 180, and no box is wider"
+            )
         for low, high, extent in (("west", "east", self.width), ("south", "north", self.north - self.south)):
             cells = extent / self.spacing
             if abs(cells - round(cells)) > 1e-6 * max(cells, 1.0) or round(cells) < 4:
                 raise ValueError(
                     f"spacing ({self.spacing}) must divide {low} to {high} ({extent:g} degrees) "
-                    "into a whole number of cells, at least 4"
+                    "into a whole number of cells, at least 4; change one of them"
                 )
         return self
 
@@ -63,7 +104,8 @@ class GridBox(Section):
     def width(self) -> float:
         """Eastward extent in degrees, 360 for a global box."""
         width = (self.east - self.west) % 360.0
-        return width if width > 0 else 360.0
+        # ends such as -16.1 and 343.9 differ from a whole turn by a rounding error
+        return 360.0 if min(width, 360.0 - width) < _ROUNDING else width
 
     @property
     def periodic(self) -> bool:
@@ -86,14 +128,18 @@ class GoodValues(Section):
     """Which observations are good: the flag's value is one of `values`, or its masked bits equal `equals`."""
 
     variable: str
-    values: tuple[int, ...] | None = None
-    mask: int | None = None
-    equals: int = 0
+    values: tuple[int, ...] | None = Field(default=None, min_length=1, description="good values of the flag")
+    mask: int | None = Field(default=None, ge=1, description="bits of the flag that count")
+    equals: int = Field(default=0, ge=0, description="what these bits are where the observation is good")
 
     @model_validator(mode="after")
     def _one_rule(self) -> GoodValues:
         if (self.values is None) == (self.mask is None):
-            raise ValueError("give either values (a list of good flag values) or mask (with equals)")
+            raise ValueError(
+                "needs one rule; give either values (a list of good values of the flag) or mask (with equals)"
+            )
+        if self.equals & ~(self.mask or 0):
+            raise ValueError(f"equals ({self.equals}) has bits that mask ({self.mask}) lacks; no flag could be good")
         return self
 
 
@@ -141,7 +187,7 @@ class Mapping(Section):
     meridional_scale_km: Positive | None = Field(default=None, description="as zonal_scale_km, northward")
     time_scale_days: Positive = Field(default=15.0, description="e-folding time of the covariance")
     zonal_drift_km_per_day: float | None = Field(
-        default=None, description="eastward drift of sea level patterns; left out: by latitude"
+        default=None, ge=-200, le=200, description="eastward drift of sea level patterns; left out: by latitude"
     )
     long_wave_m: NotNegative = Field(default=0.02, description="standard deviation of the error shared along a pass")
     bias_m: NotNegative = Field(default=0.03, description="standard deviation of the bias between altimeters")
@@ -159,7 +205,7 @@ class Currents(Section):
         if not self.blend_from_degrees < self.blend_to_degrees <= self.band_degrees:
             raise ValueError(
                 f"blend_from_degrees ({self.blend_from_degrees}) must be below blend_to_degrees "
-                f"({self.blend_to_degrees}), and that not above band_degrees ({self.band_degrees})"
+                f"({self.blend_to_degrees}), and that not above band_degrees ({self.band_degrees}); change one of them"
             )
         return self
 
@@ -182,7 +228,7 @@ class Eddies(Section):
         if self.minimum_radius_km >= self.maximum_radius_km:
             raise ValueError(
                 f"minimum_radius_km ({self.minimum_radius_km}) must be below "
-                f"maximum_radius_km ({self.maximum_radius_km})"
+                f"maximum_radius_km ({self.maximum_radius_km}); change one of them"
             )
         return self
 
@@ -204,7 +250,9 @@ class Configuration(Section):
     output: str = Field(description="work files and products go below this folder, under the analysis's name")
     period: Period
     grid: GridBox
-    altimeters: dict[Name, Altimeter] = Field(min_length=1, max_length=100)
+    altimeters: dict[Name, Altimeter] = Field(
+        min_length=1, max_length=100, json_schema_extra={"additionalProperties": False}
+    )
     mean_dynamic_topography: Source
     land: Source | None = Field(
         default=None, description="land mask; left out: land is where the mean dynamic topography is missing"
@@ -263,74 +311,10 @@ def load_configuration(path: str | Path) -> Configuration:
         The file cannot be read, is not YAML, or a key is unknown, missing or out of range.
     """
     path = Path(path)
-    content = _read_yaml(path)
+    content = read_yaml(path)
     try:
         configuration = Configuration.model_validate(content)
     except ValidationError as error:
-        where, what, remedy = _explained(path, error)
-        raise SetdriftError(where, what, remedy) from error
+        raise SetdriftError(*explained(path, error, Configuration)) from error
     configuration._path = path.absolute()  # noqa: SLF001 - the loader is the one place that knows the file
     return configuration
-
-
-def _read_yaml(path: Path) -> dict[str, Any]:
-    try:
-        content = yaml.safe_load(path.read_text(encoding="utf-8"))
-    except (OSError, UnicodeDecodeError) as error:
-        reason = error.strerror if isinstance(error, OSError) else "it is not UTF-8 text"
-        raise SetdriftError(str(path), f"cannot be read ({reason})", "give the path of a configuration file") from error
-    except yaml.YAMLError as error:
-        mark = getattr(error, "problem_mark", None)
-        line = f" at line {mark.line + 1}" if mark else ""
-        raise SetdriftError(str(path), f"is not valid YAML{line}", "mend the indentation or quoting there") from error
-    if not isinstance(content, dict):
-        raise SetdriftError(str(path), "holds no keys", "start from a file in config/")
-    return content
-
-
-def _explained(path: Path, error: ValidationError) -> tuple[str, str, str]:
-    """Turn the validator's first finding into one line with file, key, value and remedy."""
-    problems = error.errors()
-    # an unknown key often explains a missing one, so it is told first
-    first = next((p for p in problems if p["type"] == "extra_forbidden"), problems[0])
-    key = ".".join(str(part) for part in first["loc"] if part not in {"date", "literal['latest']"})
-    more = f" ({len(problems) - 1} more problem(s) in the file)" if len(problems) > 1 else ""
-    where = f"{path}: {key}" if key else str(path)
-    what, remedy = _finding(first)
-    return where, what, remedy + more
-
-
-def _finding(problem: Any) -> tuple[str, str]:
-    kind, value = problem["type"], problem.get("input")
-    if kind == "extra_forbidden":
-        return "is not a known key", _nearest_key(problem["loc"])
-    if kind == "missing":
-        return "is missing", "add it; config/README.md lists every key"
-    message = problem["msg"].removeprefix("Value error, ")
-    if kind == "value_error":
-        return message, "change one of them"
-    shown = repr(value) if len(repr(value)) <= 60 else repr(value)[:57] + "..."
-    return f"{shown} is refused", f"{message[0].lower()}{message[1:]}"
-
-
-def _nearest_key(location: tuple[Any, ...]) -> str:
-    model: Any = Configuration
-    for part in location[:-1]:
-        field = getattr(model, "model_fields", {}).get(part)
-        model = _section_of(field.annotation) if field is not None else model
-    known = list(getattr(model, "model_fields", Configuration.model_fields))
-    near = difflib.get_close_matches(str(location[-1]), known, n=1, cutoff=0.5)
-    if near:
-        return f"did you mean {near[0]}?"
-    return f"known keys here: {', '.join(known)}"
-
-
-def _section_of(annotation: Any) -> Any:
-    """Find the section class inside an annotation such as `dict[str, Altimeter]` or `Source | None`."""
-    if isinstance(annotation, type) and issubclass(annotation, BaseModel):
-        return annotation
-    for argument in getattr(annotation, "__args__", ()):
-        found = _section_of(argument)
-        if found is not None:
-            return found
-    return None
