@@ -23,6 +23,9 @@ from setdrift.data.product_store import commit_objects, is_chunk, replace_store
 
 TITLE = "Sea level and balanced surface currents"
 
+PUBLICATION_KEYS = {"history", "date_created"}
+"""Global attributes that tell when the store was written, not what it is."""
+
 
 @dataclass(frozen=True)
 class PublishedDay:
@@ -78,18 +81,19 @@ class DailyProduct:
         kept = [day for day in published if day in sources]
         account = {
             "added": [day for day in sources if day not in published],
-            "rewritten": [day for day in kept if published[day].source != sources[day]],
+            # an odd revision is left by a rewriting that was interrupted: the day may be a mixture
+            "rewritten": [day for day in kept if published[day] != PublishedDay(sources[day], _even(published[day]))],
             "retired": [day for day in published if day not in sources],
         }
         revisions = {day: published[day].revision if day in published else 0 for day in sources}
         in_place = bool(kept) and kept == list(sources)[: len(kept)] and not account["retired"]
+        after = {day: _after(revision, day in account["rewritten"]) for day, revision in revisions.items()}
         if not (in_place and self._same_layout()):
-            revisions = {day: _after(revision, day in account["rewritten"]) for day, revision in revisions.items()}
-            replace_store(self.path, self._objects(sources, revisions, list(sources)))
-        elif account["added"] or account["rewritten"]:
+            replace_store(self.path, self._objects(sources, after, list(sources)))
+        elif account["added"] or account["rewritten"] or not self._same_attributes(sources):
+            objects = self._objects(sources, after, account["rewritten"] + account["added"])
             self._mark_rewriting(revisions, account["rewritten"])
-            revisions = {day: _after(revision, day in account["rewritten"]) for day, revision in revisions.items()}
-            self._commit(self._objects(sources, revisions, account["rewritten"] + account["added"]))
+            self._commit(objects)
         return account
 
     def _published(self) -> dict[dt.date, PublishedDay]:
@@ -110,6 +114,18 @@ class DailyProduct:
         same_format = group.metadata.zarr_format == self.configuration.publish.zarr_format
         return same_format and group.attrs.get("layout_digest") == self._layout_digest()
 
+    def _same_attributes(self, sources: Mapping[dt.date, str]) -> bool:
+        """Return whether the store describes itself as the configuration now asks."""
+        published = zarr.open_group(self.path, mode="r").attrs.asdict()
+        return all(published.get(k) == v for k, v in self._attributes(sources).items() if k not in PUBLICATION_KEYS)
+
+    def _attributes(self, sources: Mapping[dt.date, str]) -> dict[str, object]:
+        grid = analysis_grid(self.configuration)
+        return global_attributes(self.configuration, TITLE, grid, list(sources), self.now) | {
+            "source_digests": json.dumps({day.isoformat(): source for day, source in sources.items()}),
+            "layout_digest": self._layout_digest(),
+        }
+
     def _layout_digest(self) -> str:
         return layout_digest(analysis_grid(self.configuration), self.fixed)
 
@@ -118,12 +134,15 @@ class DailyProduct:
         if rewritten:
             odd = {day: revision | 1 if day in rewritten else revision for day, revision in revisions.items()}
             objects = self._objects(dict.fromkeys(revisions, ""), odd, [])
-            commit_objects(self.path, {k: v for k, v in objects.items() if k.startswith("revision/") and is_chunk(k)})
+            commit_objects(self.path, {k: v for k, v in objects.items() if _is_revision(k)})
 
     def _commit(self, objects: dict[str, bytes]) -> None:
-        """Write days' chunks, then their even revisions, then the metadata."""
-        values = {k: v for k, v in objects.items() if is_chunk(k) and not k.startswith("revision/")}
-        commit_objects(self.path, values)
+        """Write days' chunks, then the metadata, then the even revisions.
+
+        Were the revisions even before the metadata tells the days' new sources, a day interrupted in between would
+        pass for the old one, if the change was then undone.
+        """
+        commit_objects(self.path, {k: v for k, v in objects.items() if not _is_revision(k)})
         commit_objects(self.path, objects)
 
     def _objects(
@@ -132,10 +151,7 @@ class DailyProduct:
         """Build the store in memory: metadata for all days, chunks for the days to be written."""
         grid, zarr_format = analysis_grid(self.configuration), self.configuration.publish.zarr_format
         whole = template(grid, list(sources), revisions, self.fixed)
-        whole.attrs = global_attributes(self.configuration, TITLE, grid, list(sources), self.now) | {
-            "source_digests": json.dumps({day.isoformat(): source for day, source in sources.items()}),
-            "layout_digest": self._layout_digest(),
-        }
+        whole.attrs = self._attributes(sources)
         memory: dict[str, Any] = {}
         store = MemoryStore(memory)
         position = {day: i for i, day in enumerate(sources)}
@@ -154,6 +170,14 @@ class DailyProduct:
                 region = {"time": slice(position[day], position[day] + 1)}
                 day_dataset(self.load_day(day)).to_zarr(store, region=region, write_empty_chunks=True)
         return {key: value.to_bytes() for key, value in memory.items()}
+
+
+def _is_revision(key: str) -> bool:
+    return key.startswith("revision/") and is_chunk(key)
+
+
+def _even(day: PublishedDay) -> int:
+    return day.revision & ~1
 
 
 def _after(revision: int, rewritten: bool) -> int:

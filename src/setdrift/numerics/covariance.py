@@ -17,8 +17,8 @@ ZERO_CROSSING = 3.34
 # Zero-crossing scales by latitude: common practice, no source. Mesoscale features shrink with the deformation radius
 # and are longer along the equator than across it.
 _LATITUDES = np.array([0.0, 5.0, 10.0, 20.0, 30.0, 45.0, 60.0, 90.0])
-_ZONAL_KM = np.array([400.0, 350.0, 290.0, 230.0, 190.0, 150.0, 120.0, 100.0])
-_MERIDIONAL_KM = np.array([270.0, 260.0, 240.0, 210.0, 180.0, 145.0, 120.0, 100.0])
+_ZONAL_KM = np.array([800.0, 550.0, 320.0, 230.0, 190.0, 150.0, 120.0, 100.0])
+_MERIDIONAL_KM = np.array([300.0, 280.0, 240.0, 210.0, 180.0, 145.0, 120.0, 100.0])
 
 # The large-scale part, e-folding distances and time of a Gaussian: common practice, no source. It stands for
 # equatorial waves and basin-wide change, which the mesoscale covariance has no room for.
