@@ -18,6 +18,7 @@ from setdrift.data.digests import digest
 from setdrift.data.eddy_product import publish_eddy_store
 from setdrift.data.fixed import load_fixed_fields
 from setdrift.data.grids import analysis_grid, working_grid
+from setdrift.data.lock import only_publisher
 from setdrift.data.receipts import analysed_period, contents_between
 from setdrift.data.records import read_record, write_record
 
@@ -49,7 +50,8 @@ def publish_daily(configuration: Configuration, now: dt.datetime, announce: Call
     fixed = load_fixed_fields(configuration)
     fields = {name: np.asarray(values)[rows, columns] for name, values in fixed.data_vars.items()}
     product = DailyProduct(configuration, {str(name): field for name, field in fields.items()}, load_day, now)
-    account = product.publish(sources)
+    with only_publisher(configuration.products):
+        account = product.publish(sources)
     announce(", ".join(f"{len(days)} days {what}" for what, days in account.items()))
     for day in account["retired"]:
         announce(f"{day} retired: it is no longer in the analysed period")
@@ -77,7 +79,8 @@ def publish_eddies(configuration: Configuration, now: dt.datetime, announce: Cal
     eddies, trajectories = (DayStore(configuration.work / stage) for stage in ("eddies", "trajectories"))
     days = {day: eddies.load(day) for day in detected}
     identifiers = {day: trajectories.load(day)["trajectory"].values for day in detected}
-    publish_eddy_store(configuration, days, identifiers, source, now)
+    with only_publisher(configuration.products):
+        publish_eddy_store(configuration, days, identifiers, source, now)
     count = sum(values.size for values in identifiers.values())
     announce(f"{count} detections on {len(days)} days")
     write_record(configuration.work / "published" / "eddies.json", {"source": source, "detections": count})
