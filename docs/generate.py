@@ -31,6 +31,10 @@ STORES = ("daily.zarr", "eddies.zarr")
 
 # attributes that differ from one publication to the next would change the page for nothing
 PASSING = {"history", "date_created", "source_digests", "source_digest", "settings_digest", "layout_digest"}
+GRAPH_STYLE = """digraph rules {
+graph [bgcolor="#fbfbf8", pad=0.2]
+node [shape=box, style=rounded, fontname="sans-serif", fontsize=12, color="#1f2d3a", fontcolor="#1f2d3a"]
+edge [color="#5b6b78"]"""
 LONGEST = 100  # characters of an attribute that are shown
 
 # keys whose name and section say all but a phrase
@@ -220,17 +224,20 @@ def listing(store: Path) -> str:
     """
     lines = [store.name]
     with xr.open_datatree(store, engine="zarr", consolidated=False, decode_cf=False) as tree:
-        for group in tree.subtree:
+        for group in sorted(tree.subtree, key=lambda group: group.path):
             lines += _group_lines(group)
     return "\n".join(lines)
 
 
 def _group_lines(group: xr.DataTree) -> Iterator[str]:
+    # groups, variables and dimensions of a store come in no order of their own
     yield ""
     yield f"group {group.path}"
     if group.sizes:
-        yield "  dimensions: " + ", ".join(f"{name} = {size}" for name, size in group.sizes.items())
-    for name, variable in group.dataset.variables.items():
+        yield "  dimensions: " + ", ".join(f"{name} = {size}" for name, size in sorted(group.sizes.items()))
+    for name, variable in sorted(
+        group.dataset.variables.items(), key=lambda item: (item[0] not in group.dims, item[0])
+    ):
         chunks = variable.encoding.get("chunks")
         yield f"  {variable.dtype} {name}({', '.join(map(str, variable.dims))})" + (
             f", chunks {chunks}" if chunks else ""
@@ -262,21 +269,11 @@ def rule_graph(config: Path) -> str:
         SVG text.
     """
     snakemake = [str(Path(sys.executable).with_name("snakemake")), "--cores", "1", "--configfile", str(config)]
-    graph = _output_of([*snakemake, "--rulegraph"])
-    # one style for all rules: hues would suggest a meaning
-    graph = re.sub(r', color = "[^"]*", style="rounded"', "", graph)
-    style = {
-        "-Gbgcolor": "#fbfbf8",
-        "-Gpad": "0.2",
-        "-Nfontname": "sans-serif",
-        "-Nfontsize": "12",
-        "-Ncolor": "#1f2d3a",
-        "-Nfontcolor": "#1f2d3a",
-    }
-    graph = graph.replace("bgcolor=white, margin=0", "").replace("fontsize=10, penwidth=2", "penwidth=1.2")
-    graph = graph.replace("fontname=sans,", "").replace("penwidth=2, color=grey", 'penwidth=1.2, color="#5b6b78"')
-    options = [f"{option}={value}" for option, value in style.items()]
-    return _output_of(["dot", "-Tsvg", *options], graph)
+    printed = _output_of([*snakemake, "--rulegraph"])
+    names = dict(re.findall(r'(\d+)\[label = "(\w+)"', printed))
+    arrows = sorted(f"{names[start]} -> {names[end]}" for start, end in re.findall(r"(\d+) -> (\d+)", printed))
+    # numbers and hues change from run to run, and hues would suggest a meaning: the graph is written anew
+    return _output_of(["dot", "-Tsvg"], "\n".join([GRAPH_STYLE, *arrows, "}"]))
 
 
 def _output_of(command: Sequence[str], given: str = "") -> str:
