@@ -104,7 +104,7 @@ def test_a_listing_is_made_of_what_the_store_holds(generate: ModuleType, tmp_pat
     data = xr.Dataset({"height": (("y", "x"), [[1.0, 2.0]], {"units": "m", "comment": "long " * 40})})
     data.to_zarr(tmp_path / "a.zarr", consolidated=False, encoding={"height": {"chunks": (1, 1)}})
     lines = generate.listing(tmp_path / "a.zarr").splitlines()
-    assert "  dimensions: y = 1, x = 2" in lines
+    assert "  dimensions: x = 2, y = 1" in lines
     assert "  float64 height(y, x), chunks (1, 1)" in lines
     assert '      units = "m"' in lines
     assert max(map(len, lines)) < 140
