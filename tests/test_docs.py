@@ -18,6 +18,7 @@ from setdrift.data.conventions import DAILY_VARIABLES, EDDY_COLUMNS
 
 ROOT = Path(__file__).parents[1]
 KEYS = (ROOT / "config" / "README.md").read_text(encoding="utf-8")
+METHODS = (ROOT / "docs" / "methods.md").read_text(encoding="utf-8")
 PRODUCTS = (ROOT / "docs" / "products.md").read_text(encoding="utf-8")
 
 
@@ -88,6 +89,10 @@ def test_every_example_is_a_sound_configuration(number: int, tmp_path: Path) -> 
 def test_the_tables_of_variables_are_those_of_the_code(generate: ModuleType) -> None:
     assert between(PRODUCTS, "daily variables") == generate.daily_table()
     assert between(PRODUCTS, "eddy properties") == generate.eddy_table()
+
+
+def test_the_table_of_scales_is_that_of_the_covariance(generate: ModuleType) -> None:
+    assert between(METHODS, "scales") == generate.scales_table()
 
 
 @pytest.mark.parametrize(("store", "table"), [("daily.zarr", DAILY_VARIABLES), ("eddies.zarr", EDDY_COLUMNS)])
