@@ -37,39 +37,6 @@ node [shape=box, style=rounded, fontname="sans-serif", fontsize=12, color="#1f2d
 edge [color="#5b6b78"]"""
 LONGEST = 100  # characters of an attribute that are shown
 
-# keys whose name and section say all but a phrase
-MEANINGS = {
-    "period.start": "first day",
-    "grid.west": "western edge of the box, degrees east; any convention",
-    "grid.east": "eastern edge; below `west` for a box across the dateline",
-    "grid.south": "southern edge, degrees north",
-    "grid.north": "northern edge, degrees north",
-    "grid.spacing": "degrees, in both directions",
-    "altimeters.NAME.variables.time": "name of the variable that holds the time",
-    "altimeters.NAME.variables.latitude": "the same for latitude",
-    "altimeters.NAME.variables.longitude": "the same for longitude",
-    "altimeters.NAME.variables.sea_level_anomaly": "the same for the sea level anomaly",
-    "altimeters.NAME.variables.pass_number": "the same for the number of the pass; used only with `cycle_number`",
-    "altimeters.NAME.variables.cycle_number": "the same for the number of the cycle; used only with `pass_number`",
-    "altimeters.NAME.good.variable": "name of the flag variable",
-    "mean_dynamic_topography.file": "path of the gridded file, relative to the configuration file",
-    "mean_dynamic_topography.variable": "name of the field where its standard name does not tell",
-    "land.file": "path of the gridded file, relative to the configuration file",
-    "land.variable": "name of the mask where its standard name does not tell",
-    "eddies.field": "the map that eddies are sought in",
-    "eddies.minimum_amplitude_m": "least height of the extreme above or below the outer contour",
-    "eddies.minimum_prominence_m": "least height of an extreme over the saddle to a stronger one",
-    "eddies.minimum_radius_km": "of the circle of the outer contour's area",
-    "eddies.maximum_radius_km": "of the circle of the outer contour's area",
-    "eddies.maximum_circle_misfit": "area between the outer contour and that circle, over that area",
-    "eddies.equatorial_exclusion_degrees": "no eddy is centred nearer the equator",
-    "publish.zarr_format": "format of the stores",
-    "publish.institution": "whose product it is; goes into the attributes",
-    "publish.licence": "terms of use; goes into the attributes",
-    "publish.creator_name": "goes into the attributes",
-    "publish.creator_email": "goes into the attributes",
-}
-
 
 def replaced_between(text: str, name: str, content: str) -> str:
     """Return a page with the part between the markers of a name replaced.
@@ -110,16 +77,16 @@ def key_tables() -> str:
     """Return a table of the keys of each section of the configuration, from the model that checks them."""
     schema = Configuration.model_json_schema()
     parts = []
-    for title, note, section, prefix in _sections(schema):
-        rows = [_key_row(prefix + name, name, field, section) for name, field in section["properties"].items()]
+    for title, note, section in _sections(schema):
+        rows = [_key_row(name, field, section) for name, field in section["properties"].items()]
         rows = [row for row in rows if row]
         parts.append(f"### {title}\n\n{note}\n\n{table(('key', 'type', 'default', 'limits', 'meaning'), rows)}")
     return "\n\n".join(parts)
 
 
-def _sections(schema: Mapping[str, Any]) -> Iterator[tuple[str, str, Mapping[str, Any], str]]:
-    """Yield title, description, schema and prefix of every section, outermost first."""
-    yield "The file itself", schema["description"], schema, ""
+def _sections(schema: Mapping[str, Any]) -> Iterator[tuple[str, str, Mapping[str, Any]]]:
+    """Yield title, description and schema of every section, outermost first."""
+    yield "The file itself", schema["description"], schema
     waiting = [(name, field, "") for name, field in schema["properties"].items()]
     while waiting:
         name, field, prefix = waiting.pop(0)
@@ -127,7 +94,7 @@ def _sections(schema: Mapping[str, Any]) -> Iterator[tuple[str, str, Mapping[str
         if section is None:
             continue
         path = prefix + name + (".NAME" if "patternProperties" in field else "")
-        yield f"`{path}`", section["description"], section, f"{path}."
+        yield f"`{path}`", section["description"], section
         waiting = [(inner, value, f"{path}.") for inner, value in section["properties"].items()] + waiting
 
 
@@ -139,11 +106,11 @@ def _section_of(field: Mapping[str, Any], sections: Mapping[str, Any]) -> Mappin
     return None
 
 
-def _key_row(path: str, name: str, field: Mapping[str, Any], section: Mapping[str, Any]) -> list[str]:
+def _key_row(name: str, field: Mapping[str, Any], section: Mapping[str, Any]) -> list[str]:
     """Return the cells of a key's row."""
     choices = [choice for choice in field.get("anyOf", [field]) if choice.get("type") != "null"]
     is_section = any("$ref" in choice for choice in choices) or "patternProperties" in field
-    meaning = field.get("description") or ("see its own table below" if is_section else MEANINGS[path])
+    meaning = field.get("description", "see its own table below")
     if name in section.get("required", ()):
         default = "**required**"
     elif field.get("default") in (None, [], {}) or is_section:

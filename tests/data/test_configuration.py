@@ -210,7 +210,7 @@ def test_every_number_has_a_limit(key: Key) -> None:
         ({"currents.blend_to_degrees": 8}, "currents: blend_from_degrees (4.0) must be below blend_to_degrees (8.0)"),
         (
             {"eddies.minimum_radius_km": 300},
-            "eddies: minimum_radius_km (300.0) must be below maximum_radius_km (300.0)",
+            "eddies: minimum_radius_km (300.0) must be below maximum_radius_km (250.0)",
         ),
         ({"altimeters.heron.good.mask": 5}, "altimeters.heron.good: needs one rule; give either values"),
         ({"altimeters.heron.good.values": None}, "altimeters.heron.good: needs one rule; give either values"),

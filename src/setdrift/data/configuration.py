@@ -58,7 +58,7 @@ class Section(BaseModel):
 class Period(Section):
     """Days to analyse, both ends included."""
 
-    start: Annotated[dt.date, BeforeValidator(_day)]
+    start: Annotated[dt.date, BeforeValidator(_day)] = Field(description="first day")
     end: Annotated[dt.date | Literal["latest"], BeforeValidator(_day_or_latest)] = Field(
         description="a date, or 'latest': the newest day with observations"
     )
@@ -76,11 +76,11 @@ _ROUNDING = 1e-9
 class GridBox(Section):
     """The box and its spacing in degrees; grid points are the centres of its cells."""
 
-    west: float = Field(ge=-360, le=360)
-    east: float = Field(ge=-360, le=360)
-    south: float = Field(ge=-90, le=90)
-    north: float = Field(ge=-90, le=90)
-    spacing: float = Field(gt=0, le=2)
+    west: float = Field(ge=-360, le=360, description="western edge of the box, degrees east; any convention")
+    east: float = Field(ge=-360, le=360, description="eastern edge; below `west` for a box across the dateline")
+    south: float = Field(ge=-90, le=90, description="southern edge, degrees north")
+    north: float = Field(ge=-90, le=90, description="northern edge, degrees north")
+    spacing: float = Field(gt=0, le=2, description="degrees, in both directions")
 
     @model_validator(mode="after")
     def _sound(self) -> GridBox:
@@ -116,18 +116,22 @@ class GridBox(Section):
 class VariableNames(Section):
     """Names of variables in files that carry no CF standard names; those left out are found by standard name."""
 
-    time: str | None = None
-    latitude: str | None = None
-    longitude: str | None = None
-    sea_level_anomaly: str | None = None
-    pass_number: str | None = None
-    cycle_number: str | None = None
+    time: str | None = Field(default=None, description="name of the variable that holds the time")
+    latitude: str | None = Field(default=None, description="the same for latitude")
+    longitude: str | None = Field(default=None, description="the same for longitude")
+    sea_level_anomaly: str | None = Field(default=None, description="the same for the sea level anomaly")
+    pass_number: str | None = Field(
+        default=None, description="the same for the number of the pass; used only with `cycle_number`"
+    )
+    cycle_number: str | None = Field(
+        default=None, description="the same for the number of the cycle; used only with `pass_number`"
+    )
 
 
 class GoodValues(Section):
     """Which observations are good: the flag's value is one of `values`, or its masked bits equal `equals`."""
 
-    variable: str
+    variable: str = Field(description="name of the flag variable")
     values: tuple[int, ...] | None = Field(default=None, min_length=1, description="good values of the flag")
     mask: int | None = Field(default=None, ge=1, description="bits of the flag that count")
     equals: int = Field(default=0, ge=0, description="what these bits are where the observation is good")
@@ -157,8 +161,8 @@ class Altimeter(Section):
 class Source(Section):
     """A gridded input file, and the variable in it where standard names do not tell."""
 
-    file: str
-    variable: str | None = None
+    file: str = Field(description="path of the gridded file, relative to the configuration file")
+    variable: str | None = Field(default=None, description="name of the field where its standard name does not tell")
 
 
 class Editing(Section):
@@ -213,13 +217,23 @@ class Currents(Section):
 class Eddies(Section):
     """What counts as an eddy and how detections are linked from day to day."""
 
-    field: Literal["sea_level_anomaly", "dynamic_topography"] = "sea_level_anomaly"
-    minimum_amplitude_m: Positive = 0.02
-    minimum_prominence_m: Positive = 0.01
-    minimum_radius_km: Positive = 30.0
-    maximum_radius_km: Positive = 300.0
-    maximum_circle_misfit: float = Field(default=0.6, gt=0, le=2)
-    equatorial_exclusion_degrees: float = Field(default=3.0, ge=0, le=90)
+    field: Literal["sea_level_anomaly", "dynamic_topography"] = Field(
+        default="sea_level_anomaly", description="the map that eddies are sought in"
+    )
+    minimum_amplitude_m: Positive = Field(
+        default=0.02, description="least height of the extreme above or below the outer contour"
+    )
+    minimum_prominence_m: Positive = Field(
+        default=0.01, description="least height of an extreme over the saddle to a stronger one"
+    )
+    minimum_radius_km: Positive = Field(default=20.0, description="of the circle of the outer contour's area")
+    maximum_radius_km: Positive = Field(default=250.0, description="of the circle of the outer contour's area")
+    maximum_circle_misfit: float = Field(
+        default=0.5, gt=0, le=2, description="area between the outer contour and that circle, over that area"
+    )
+    equatorial_exclusion_degrees: float = Field(
+        default=5.0, ge=0, le=90, description="no eddy is centred nearer the equator"
+    )
     gate_km: Positive = Field(default=150.0, description="farthest a detection may lie from the predicted position")
     gap_days: int = Field(default=5, ge=0, le=30, description="days a trajectory may go unseen")
 
@@ -236,11 +250,13 @@ class Eddies(Section):
 class Publish(Section):
     """How products are written and whose they are."""
 
-    zarr_format: Literal[2, 3] = 3
-    institution: str = "not stated"
-    licence: str = "not stated: ask the institution before use"
-    creator_name: str = "not stated"
-    creator_email: str = "not stated"
+    zarr_format: Literal[2, 3] = Field(default=3, description="format of the stores")
+    institution: str = Field(default="not stated", description="whose product it is; goes into the attributes")
+    licence: str = Field(
+        default="not stated: ask the institution before use", description="terms of use; goes into the attributes"
+    )
+    creator_name: str = Field(default="not stated", description="goes into the attributes")
+    creator_email: str = Field(default="not stated", description="goes into the attributes")
 
 
 class Configuration(Section):

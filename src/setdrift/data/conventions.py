@@ -33,6 +33,7 @@ class MapQuality(IntFlag):
     """Bits of `map_quality`; 0 is good."""
 
     UNOBSERVED = 1
+    LAND = 2
 
 
 UNOBSERVED_LIMIT = 0.9
@@ -116,8 +117,8 @@ DAILY_VARIABLES = (
         "maps",
         "",
         {
-            "flag_masks": [int(MapQuality.UNOBSERVED)],
-            "flag_meanings": "unobserved",
+            "flag_masks": [int(bit) for bit in MapQuality],
+            "flag_meanings": "unobserved land",
             "comment": f"unobserved: the error exceeds {UNOBSERVED_LIMIT} of the prior standard deviation",
         },
     ),

@@ -18,10 +18,8 @@ from zarr.storage import MemoryStore
 from setdrift.data.configuration import Configuration
 from setdrift.data.daily_layout import day_dataset, encoding, layout_digest, template
 from setdrift.data.grids import analysis_grid
-from setdrift.data.metadata import global_attributes
+from setdrift.data.metadata import DAILY_PRODUCT, global_attributes
 from setdrift.data.product_store import commit_objects, is_chunk, replace_store
-
-TITLE = "Sea level and balanced surface currents"
 
 PUBLICATION_KEYS = {"history", "date_created"}
 """Global attributes that tell when the store was written, not what it is."""
@@ -121,7 +119,7 @@ class DailyProduct:
 
     def _attributes(self, sources: Mapping[dt.date, str]) -> dict[str, object]:
         grid = analysis_grid(self.configuration)
-        return global_attributes(self.configuration, TITLE, grid, list(sources), self.now) | {
+        return global_attributes(self.configuration, DAILY_PRODUCT, grid, list(sources), self.now) | {
             "source_digests": json.dumps({day.isoformat(): source for day, source in sources.items()}),
             "layout_digest": self._layout_digest(),
         }

@@ -43,8 +43,29 @@ class Block:
 
     @classmethod
     def named(cls, label: str, length: int) -> Block:
-        """Return the block with this label."""
-        return cls(dt.date.fromisoformat(label), length)
+        """Return the block with this label.
+
+        Parameters
+        ----------
+        label : str
+            Its first day, YYYY-MM-DD.
+        length : int
+            Days a block has.
+
+        Returns
+        -------
+        Block
+            The block.
+
+        Raises
+        ------
+        ValueError
+            The label is no day, or no block begins on that day.
+        """
+        block = cls.holding(dt.date.fromisoformat(label), length)
+        if block.label != label:
+            raise ValueError(f"label: no block of {length} days begins on {label}, but one on {block.label}")
+        return block
 
     @property
     def label(self) -> str:

@@ -5,10 +5,12 @@ from __future__ import annotations
 import datetime as dt
 import warnings
 from collections.abc import Mapping
+from pathlib import Path
 from typing import Any
 
 import numpy as np
 import xarray as xr
+import zarr
 from numpy.typing import NDArray
 from zarr.storage import MemoryStore
 
@@ -16,10 +18,8 @@ from setdrift.data.configuration import Configuration
 from setdrift.data.conventions import EDDY_COLUMNS
 from setdrift.data.days import day_number
 from setdrift.data.grids import analysis_grid
-from setdrift.data.metadata import global_attributes
+from setdrift.data.metadata import EDDY_PRODUCT, global_attributes
 from setdrift.data.product_store import replace_store
-
-TITLE = "Eddies and their trajectories"
 
 CONTOURS = {"outer": "outermost closed contour", "fastest": "contour of fastest mean rotation"}
 
@@ -30,8 +30,8 @@ def publish_eddy_store(
     identifiers: Mapping[dt.date, NDArray[np.int64]],
     source: str,
     now: dt.datetime,
-) -> None:
-    """Build the store of eddies and put it in place of the one before in one step.
+) -> bool:
+    """Build the store of eddies and put it in place of the one before in one step, unless they are the same.
 
     Parameters
     ----------
@@ -45,10 +45,20 @@ def publish_eddy_store(
         Digest of all it is made from.
     now : datetime
         Time of publication, UTC.
+
+    Returns
+    -------
+    bool
+        Whether the store was written.
     """
-    detections = detections_dataset(days, identifiers)
-    root = xr.Dataset(attrs=global_attributes(configuration, TITLE, analysis_grid(configuration), list(days), now))
+    path = configuration.products / "eddies.zarr"
+    root = xr.Dataset(
+        attrs=global_attributes(configuration, EDDY_PRODUCT, analysis_grid(configuration), list(days), now)
+    )
     root.attrs["source_digest"] = source
+    if _holds(path, root.attrs, configuration.publish.zarr_format):
+        return False
+    detections = detections_dataset(days, identifiers)
     tree = xr.DataTree.from_dict(
         {"/": root, "/detections": detections, "/trajectories": trajectories_dataset(detections)}
     )
@@ -57,7 +67,18 @@ def publish_eddy_store(
         warnings.filterwarnings("ignore", message="Consolidated metadata is currently not part")
         tree.to_zarr(MemoryStore(memory), zarr_format=configuration.publish.zarr_format, consolidated=True)
     objects = {key: value.to_bytes() for key, value in memory.items()}
-    replace_store(configuration.products / "eddies.zarr", objects)
+    replace_store(path, objects)
+    return True
+
+
+def _holds(path: Path, attributes: Mapping[Any, Any], zarr_format: int) -> bool:
+    """Return whether there is a sound store made from the same, in the same format, under the same settings."""
+    try:
+        group = zarr.open_group(path, mode="r")
+    except (OSError, KeyError, ValueError):
+        return False
+    same = all(group.attrs.get(key) == attributes[key] for key in ("source_digest", "settings_digest"))
+    return same and group.metadata.zarr_format == zarr_format
 
 
 def detections_dataset(

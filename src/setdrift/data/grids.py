@@ -8,11 +8,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from setdrift.data.configuration import Configuration
+from setdrift.numerics.covariance import FAR_REACH, built_in_scales
 
 Floats = NDArray[np.float64]
 
 STENCIL_CELLS = 4  # the widest finite difference reaches two cells; a second derivative of it, four
-REACH_DEGREES = 6.0  # observations are used up to so far (in degrees of latitude) outside the padded grid
+KM_PER_DEGREE = 111.2  # mean length of a degree: the reach of observations need not be exact
+TILE_KM = 400.0  # half a tile with its overlap, and the drift of patterns within the window
 
 
 @dataclass(frozen=True)
@@ -98,7 +100,9 @@ def working_grid(configuration: Configuration) -> Grid:
         below = max(below, int(np.ceil((south + band) / inner.spacing)))
         above = max(above, int(np.ceil((band - north) / inner.spacing)))
     latitude = inner.latitude[0] + np.arange(-below, inner.latitude.size + above) * inner.spacing
-    side = 0 if inner.periodic else STENCIL_CELLS
+    # a box that nearly goes round is padded no further than it can be without meeting itself
+    room = round(360.0 / inner.spacing) - inner.longitude.size
+    side = 0 if inner.periodic else min(STENCIL_CELLS, room // 2)
     longitude = inner.longitude[0] + np.arange(-side, inner.longitude.size + side) * inner.spacing
     return Grid(latitude[abs(latitude) < 90], longitude, inner.spacing, inner.periodic)
 
@@ -131,11 +135,14 @@ def observation_area(configuration: Configuration) -> Area:
     Area
         The working grid and a margin; whole circles of latitude where the margin meets a pole.
     """
-    grid = working_grid(configuration)
-    south = max(grid.latitude[0] - REACH_DEGREES, -90.0)
-    north = min(grid.latitude[-1] + REACH_DEGREES, 90.0)
-    widest = np.cos(np.deg2rad(max(abs(south), abs(north))))
-    margin = REACH_DEGREES / max(widest, 1e-6)
+    grid, mapping = working_grid(configuration), configuration.mapping
+    zonal, meridional = built_in_scales(grid.latitude)
+    north_reach = FAR_REACH * (mapping.meridional_scale_km or meridional.max()) + TILE_KM
+    east_reach = FAR_REACH * (mapping.zonal_scale_km or zonal.max()) + TILE_KM
+    south = max(grid.latitude[0] - north_reach / KM_PER_DEGREE, -90.0)
+    north = min(grid.latitude[-1] + north_reach / KM_PER_DEGREE, 90.0)
+    narrowest = np.cos(np.deg2rad(max(abs(south), abs(north))))
+    margin = east_reach / (KM_PER_DEGREE * max(narrowest, 1e-6))
     width = grid.longitude[-1] - grid.longitude[0] + 2 * margin
     if grid.periodic or width >= 360.0:
         return Area(-180.0, 360.0, float(south), float(north))

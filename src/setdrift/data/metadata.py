@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import datetime as dt
 from collections.abc import Sequence
+from dataclasses import dataclass
 
 from setdrift import __version__
 from setdrift.data.configuration import Configuration
@@ -12,8 +13,31 @@ from setdrift.data.digests import digest
 from setdrift.data.grids import Grid
 
 
+@dataclass(frozen=True)
+class Product:
+    """What a product is: the name of its store without ending, a title and a summary."""
+
+    name: str
+    title: str
+    summary: str
+
+
+DAILY_PRODUCT = Product(
+    "daily",
+    "Sea level and balanced surface currents",
+    "Daily snapshots at 12:00 UTC of sea level anomaly with its formal error, dynamic topography and balanced surface "
+    "currents, by optimal interpolation of along-track altimeter sea level.",
+)
+EDDY_PRODUCT = Product(
+    "eddies",
+    "Eddies and their trajectories",
+    "Eddies found as closed contours of the daily maps at 12:00 UTC, with size, rotation and contours, and the "
+    "trajectories they form from day to day.",
+)
+
+
 def global_attributes(
-    configuration: Configuration, title: str, grid: Grid, days: Sequence[dt.date], now: dt.datetime
+    configuration: Configuration, product: Product, grid: Grid, days: Sequence[dt.date], now: dt.datetime
 ) -> dict[str, object]:
     """Return CF and ACDD global attributes of a product.
 
@@ -21,8 +45,8 @@ def global_attributes(
     ----------
     configuration : Configuration
         The analysis.
-    title : str
-        What the product is.
+    product : Product
+        Which product.
     grid : Grid
         The product's grid.
     days : sequence of date
@@ -41,11 +65,8 @@ def global_attributes(
     settings = digest(configuration.model_dump(mode="json", exclude={"output", "period", "block_days"}))
     return {
         "Conventions": "CF-1.11, ACDD-1.3",
-        "title": f"{title}: {configuration.analysis}",
-        "summary": (
-            "Daily snapshots at 12:00 UTC of sea level anomaly with its formal error, dynamic topography and balanced "
-            "surface currents, by optimal interpolation of along-track altimeter sea level. " + LIMITS
-        ),
+        "title": f"{product.title}: {configuration.analysis}",
+        "summary": f"{product.summary} {LIMITS}",
         "caution": CAUTION,
         "keywords": "sea level anomaly, dynamic topography, surface currents, eddies, altimetry",
         "source": "along-track altimeter sea level of " + ", ".join(configuration.altimeters),
@@ -55,7 +76,7 @@ def global_attributes(
         "creator_name": publish.creator_name,
         "creator_email": publish.creator_email,
         "naming_authority": publish.institution,
-        "id": configuration.analysis,
+        "id": f"{configuration.analysis}.{product.name}",
         "history": f"{stamp}: published by setdrift {__version__} with settings {settings}",
         "settings_digest": settings,
         "date_created": stamp,

@@ -96,6 +96,35 @@ def contents_between(configuration: Configuration, stage: str, first: dt.date, l
     return {day: found[day.isoformat()]["content"] for day in wanted}
 
 
+def analysed_days(configuration: Configuration, block: Block) -> list[dt.date]:
+    """Return the analysed days of a block.
+
+    Parameters
+    ----------
+    configuration : Configuration
+        The analysis.
+    block : Block
+        The days a job handles.
+
+    Returns
+    -------
+    list of date
+        At least one.
+
+    Raises
+    ------
+    SetdriftError
+        The block holds none.
+    """
+    first, last = analysed_period(configuration)
+    days = block.days_within(first, last)
+    if not days:
+        raise SetdriftError(
+            f"block {block.label}", f"holds no analysed day ({first} to {last})", "choose another or change period"
+        )
+    return days
+
+
 def analysed_period(configuration: Configuration) -> tuple[dt.date, dt.date]:
     """Return the first and last analysed day, as the inventory settled them.
 

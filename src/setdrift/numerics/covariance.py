@@ -14,6 +14,9 @@ Floats = NDArray[np.floating]
 ZERO_CROSSING = 3.34
 """Scaled distance at which the correlation crosses zero (root of 1 + s + s^2/6 - s^3/6)."""
 
+FAR_REACH = 2.0
+"""Observations within this many zero-crossing scales of a place are worth using: beyond, the covariance is spent."""
+
 # Zero-crossing scales by latitude: common practice, no source. Mesoscale features shrink with the deformation radius
 # and are longer along the equator than across it.
 _LATITUDES = np.array([0.0, 5.0, 10.0, 20.0, 30.0, 45.0, 60.0, 90.0])

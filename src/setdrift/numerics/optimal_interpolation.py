@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from scipy.linalg import lapack
 from scipy.spatial import cKDTree
 
-from setdrift.numerics.covariance import Covariance, CovarianceModel
+from setdrift.numerics.covariance import FAR_REACH, Covariance, CovarianceModel
 from setdrift.numerics.covariance_kernels import fill_cross_covariance, fill_observation_covariance
 from setdrift.numerics.local_plane import MEAN_RADIUS_KM, to_plane
 from setdrift.numerics.superobservations import SeaLevelObservations, average_along_pass
@@ -23,8 +23,6 @@ Floats = NDArray[np.float64]
 
 NEAR_REACH = 0.5
 """Fine means are taken within this many zero-crossing scales of the tile."""
-FAR_REACH = 2.0
-"""Coarse means are taken within this many zero-crossing scales of the tile."""
 FINE_LENGTH = 0.15
 """Length of a fine mean in zero-crossing scales."""
 COARSENESS = 4

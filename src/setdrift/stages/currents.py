@@ -14,7 +14,7 @@ from setdrift.data.day_store import DayStore
 from setdrift.data.days import Block
 from setdrift.data.digests import digest
 from setdrift.data.grids import working_grid
-from setdrift.data.receipts import analysed_period, contents_between, refresh_block
+from setdrift.data.receipts import analysed_days, contents_between, refresh_block
 from setdrift.numerics.derivatives import relative_vorticity
 from setdrift.numerics.geostrophy import EquatorialBand, geostrophic_velocity, rossby_number
 
@@ -36,7 +36,7 @@ def currents_block(configuration: Configuration, block: Block, announce: Callabl
     dict
         The job's receipt.
     """
-    days = block.days_within(*analysed_period(configuration))
+    days = analysed_days(configuration, block)
     mapped = contents_between(configuration, "maps", days[0], days[-1])
     added = contents_between(configuration, "dynamic_topography", days[0], days[-1])
     maps = DayStore(configuration.work / "maps")

@@ -14,7 +14,7 @@ from setdrift.data.day_store import DayStore
 from setdrift.data.days import Block
 from setdrift.data.digests import digest
 from setdrift.data.fixed import fixed_digest, load_fixed_fields
-from setdrift.data.receipts import analysed_period, contents_between, refresh_block
+from setdrift.data.receipts import analysed_days, contents_between, refresh_block
 
 
 def add_mean_block(configuration: Configuration, block: Block, announce: Callable[[str], None]) -> dict[str, Any]:
@@ -34,7 +34,7 @@ def add_mean_block(configuration: Configuration, block: Block, announce: Callabl
     dict
         The job's receipt.
     """
-    days = block.days_within(*analysed_period(configuration))
+    days = analysed_days(configuration, block)
     mapped = contents_between(configuration, "maps", days[0], days[-1])
     common = digest(
         settings_digest(configuration, "dynamic_topography"), fixed_digest(configuration, "mean_dynamic_topography")

@@ -17,7 +17,7 @@ from setdrift.data.day_store import DayStore
 from setdrift.data.days import Block
 from setdrift.data.digests import digest
 from setdrift.data.grids import Grid, analysis_grid, working_grid
-from setdrift.data.receipts import analysed_period, contents_between, refresh_block
+from setdrift.data.receipts import analysed_days, contents_between, refresh_block
 from setdrift.numerics.eddy_detection import EddyLimits, detect_eddies
 from setdrift.numerics.eddy_table import Eddies
 
@@ -41,7 +41,7 @@ def eddies_block(configuration: Configuration, block: Block, announce: Callable[
     dict
         The job's receipt.
     """
-    days = block.days_within(*analysed_period(configuration))
+    days = analysed_days(configuration, block)
     settings = configuration.eddies
     source, suffix = ("maps", "_anomaly") if settings.field == "sea_level_anomaly" else ("dynamic_topography", "")
     heights = contents_between(configuration, source, days[0], days[-1])
@@ -72,10 +72,12 @@ def eddies_block(configuration: Configuration, block: Block, announce: Callable[
 def _inside(found: Eddies, inner: Grid) -> np.ndarray[Any, np.dtype[np.bool_]]:
     """Return which eddies are centred in the analysis box: the padding is there only for the contours."""
     half = inner.spacing / 2.0
-    inside = np.ones(len(found), dtype=bool)
-    for values, axis in ((found.latitude, inner.latitude), (found.longitude, inner.longitude)):
-        inside &= (values >= axis[0] - half) & (values < axis[-1] + half)
-    return inside
+    south, north = inner.latitude[0] - half, inner.latitude[-1] + half
+    inside = (found.latitude >= south) & (found.latitude < north)
+    if inner.periodic:
+        return np.asarray(inside)
+    west, east = inner.longitude[0] - half, inner.longitude[-1] + half
+    return np.asarray(inside & (found.longitude >= west) & (found.longitude < east))
 
 
 def eddy_dataset(found: Eddies, keep: np.ndarray[Any, np.dtype[np.bool_]]) -> xr.Dataset:

@@ -17,7 +17,7 @@ from setdrift.data.days import Block, day_number, days_between
 from setdrift.data.digests import digest
 from setdrift.data.fixed import fixed_digest, load_fixed_fields
 from setdrift.data.grids import Grid, working_grid
-from setdrift.data.receipts import analysed_period, contents_between, refresh_block
+from setdrift.data.receipts import analysed_days, contents_between, refresh_block
 from setdrift.numerics.covariance import CovarianceModel
 from setdrift.numerics.optimal_interpolation import MappingSettings, map_sea_level
 from setdrift.numerics.superobservations import SeaLevelObservations
@@ -42,7 +42,7 @@ def map_block(configuration: Configuration, block: Block, announce: Callable[[st
     dict
         The job's receipt.
     """
-    days = block.days_within(*analysed_period(configuration))
+    days = analysed_days(configuration, block)
     window = dt.timedelta(days=configuration.mapping.window_days)
     observed = contents_between(configuration, "observations", days[0] - window, days[-1] + window)
     grid = working_grid(configuration)
@@ -73,15 +73,15 @@ class _Mapper:
         mapped = map_sea_level(
             self._window(day), self._grid.latitude, self._grid.longitude, self._sea, moment, self._settings
         )
-        prior = self._settings.model.prior_standard_deviation
-        unobserved = mapped.error > UNOBSERVED_LIMIT * prior
+        unobserved = mapped.error > UNOBSERVED_LIMIT * self._settings.model.prior_standard_deviation
+        quality = np.where(unobserved, MapQuality.UNOBSERVED, 0) + np.where(self._sea, 0, MapQuality.LAND)
         dims = ("latitude", "longitude")
         return xr.Dataset(
             {
                 "sea_level_anomaly": (dims, mapped.estimate),
                 "sea_level_anomaly_error": (dims, mapped.error),
                 "observation_count": (dims, mapped.observation_count),
-                "map_quality": (dims, unobserved.astype(np.int8) * np.int8(MapQuality.UNOBSERVED)),
+                "map_quality": (dims, quality.astype(np.int8)),
             },
             coords={"latitude": self._grid.latitude, "longitude": self._grid.longitude},
         )

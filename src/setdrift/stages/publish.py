@@ -80,7 +80,7 @@ def publish_eddies(configuration: Configuration, now: dt.datetime, announce: Cal
     days = {day: eddies.load(day) for day in detected}
     identifiers = {day: trajectories.load(day)["trajectory"].values for day in detected}
     with only_publisher(configuration.products):
-        publish_eddy_store(configuration, days, identifiers, source, now)
+        written = publish_eddy_store(configuration, days, identifiers, source, now)
     count = sum(values.size for values in identifiers.values())
-    announce(f"{count} detections on {len(days)} days")
+    announce(f"{count} detections on {len(days)} days{'' if written else ', unchanged'}")
     write_record(configuration.work / "published" / "eddies.json", {"source": source, "detections": count})
