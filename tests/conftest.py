@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import copy
+import shutil
 from collections.abc import Callable
 from pathlib import Path
 from typing import Any
@@ -48,3 +50,23 @@ def configure(tmp_path: Path) -> Callable[..., Configuration]:
         return load_configuration(path)
 
     return make
+
+
+@pytest.fixture(scope="session")
+def finished_sea(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """Give a folder with a small sea and its whole analysis, made once; use `analysed_sea` for a copy to change."""
+    from tiny_analysis import BOX, run_chain, write_sea  # noqa: PLC0415 - costs seconds that few tests need
+
+    folder = tmp_path_factory.mktemp("finished_sea")
+    write_sea(folder)
+    path = folder / "small_sea.yaml"
+    path.write_text(yaml.safe_dump(SMALL_ANALYSIS | copy.deepcopy(BOX)))
+    run_chain(load_configuration(path))
+    return folder
+
+
+@pytest.fixture
+def analysed_sea(finished_sea: Path, tmp_path: Path) -> Path:
+    """Give a copy of the small sea and its analysis, in the folder that `configure` uses."""
+    shutil.copytree(finished_sea, tmp_path, dirs_exist_ok=True)
+    return tmp_path

@@ -99,7 +99,9 @@ def _job(chosen: argparse.Namespace) -> None:
         try:
             block = Block.named(chosen.block, configuration.block_days)
         except ValueError as error:
-            raise SetdriftError(f"--block {chosen.block}", "is not a day", "write it as YYYY-MM-DD") from error
+            what = "is not the first day of a block"
+            remedy = f"write it as YYYY-MM-DD ({error})"
+            raise SetdriftError(f"--block {chosen.block}", what, remedy) from error
     run_job(Job(configuration, chosen.rule, block), chosen.log, lambda line: print(line, flush=True))
 
 
