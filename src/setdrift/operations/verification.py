@@ -74,7 +74,11 @@ def _on_grid_of(product: xr.Dataset, true_file: xr.Dataset) -> xr.Dataset:
     days = np.intersect1d(true.time.values, product.time.values)
     if days.size == 0:
         raise SetdriftError("--truth", "shares no time with the product", "give a truth for the analysed days")
-    return true.sel(time=days).interp(latitude=product.latitude, longitude=product.longitude).load()
+    on_grid = true.sel(time=days).interp(latitude=product.latitude, longitude=product.longitude).load()
+    if not np.isfinite(on_grid["sea_level_anomaly"] + product["sea_level_anomaly"]).any():
+        what = "has no value at any sea point of the product"
+        raise SetdriftError("--truth", what, "give a truth of the same area, longitudes counted the same way")
+    return on_grid
 
 
 def _bands(latitude: Floats) -> Iterator[tuple[str, NDArray[np.bool_]]]:
@@ -97,7 +101,9 @@ def _sea_level_lines(product: xr.Dataset, true: xr.Dataset) -> Iterator[str]:
     for name, rows in _bands(product.latitude.values):
         d, e, t = difference[:, rows], error[:, rows], truth[:, rows]
         sound = np.isfinite(d) & np.isfinite(e)
-        d, e, deviation = d[sound], e[sound], np.nanstd(t[sound])
+        if not sound.any():
+            continue  # land all round
+        d, e, deviation = d[sound], e[sound], np.std(t[sound])
         rmse = np.sqrt(np.mean(d**2))
         one, two = (100.0 * np.mean(np.abs(d) <= k * e) for k in (1, 2))
         yield f"{name:<26}{deviation * 100:>10.2f}{rmse * 100:>8.2f}{rmse / deviation:>11.3f}{one:>10.1f}{two:>11.1f}"
@@ -111,9 +117,12 @@ def _velocity_lines(product: xr.Dataset, true: xr.Dataset) -> Iterator[str]:
             truth = true[component].values[:, rows]
             difference = product[component].values[:, rows] - truth
             sound = np.isfinite(difference)
+            if not sound.any():
+                break
             deviation, rmse = np.std(truth[sound]), np.sqrt(np.mean(difference[sound] ** 2))
             cells.append(f"{deviation:>{width}.3f}{rmse:>8.3f}{rmse / deviation:>10.3f}")
-        yield "".join(cells)
+        else:
+            yield "".join(cells)
 
 
 def _seam_lines(configuration: Configuration, product: xr.Dataset) -> Iterator[str]:
