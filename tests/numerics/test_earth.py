@@ -6,9 +6,7 @@ import numpy as np
 import pytest
 
 from setdrift.numerics.earth import (
-    WGS84,
     beta_parameter,
-    cell_area,
     coriolis_parameter,
     gravity,
     meridional_radius,
@@ -52,21 +50,6 @@ def test_a_degree_of_longitude_vanishes_at_the_poles_and_never_turns_negative():
     np.testing.assert_allclose(east[[0, 2, 3]], 0.0, atol=1e-8)
     assert np.all(east >= 0.0)
     assert north[0] == north[2] > north[1]
-
-
-@pytest.mark.parametrize("earth", [WGS84, SPHERE])
-def test_cells_tile_the_globe(earth):
-    rows = np.arange(-89.875, 90.0, 0.25)
-    total = cell_area(rows, 0.25, 0.25, earth).sum() * 1440
-    eccentricity = np.sqrt(earth.eccentricity_squared)
-    ratio = np.arctanh(eccentricity) / eccentricity if eccentricity else 1.0
-    whole = 2 * np.pi * earth.semi_major_axis**2 * (1 + (1 - earth.eccentricity_squared) * ratio)
-    assert total == pytest.approx(whole, rel=1e-12)
-
-
-def test_cells_are_cut_off_at_the_poles():
-    assert cell_area(90.0, 1.0, 1.0) == pytest.approx(cell_area(89.75, 1.0, 0.5), rel=1e-12)
-    assert cell_area(-90.0, 1.0, 1.0) == pytest.approx(cell_area(90.0, 1.0, 1.0), rel=1e-12)
 
 
 @pytest.mark.parametrize(("radius", "g", "name"), [(0.0, 9.8, "radius"), (6e6, -1.0, "gravity")])

@@ -8,16 +8,13 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from pyproj import Geod, Transformer
 
-from setdrift.numerics.earth import WGS84, cell_area, spherical_earth
+from setdrift.numerics.authalic import authalic_latitude, authalic_radius
+from setdrift.numerics.earth import WGS84
 from setdrift.numerics.eddy_geometry import (
     area_and_misfit,
-    authalic_latitude,
-    authalic_radius,
     interpolate_axis,
     project_points,
 )
-
-WHOLE_EARTH = float(cell_area(0.0, 360.0, 180.0))
 
 
 def misfit_of(x, y):
@@ -27,19 +24,6 @@ def misfit_of(x, y):
 def ring(n=4000):
     angle = np.linspace(0, 2 * np.pi, n, endpoint=False)
     return np.cos(angle), np.sin(angle)
-
-
-def test_the_authalic_sphere_has_the_area_of_the_earth():
-    assert 4 * np.pi * authalic_radius() ** 2 == pytest.approx(WHOLE_EARTH, rel=1e-12)
-    assert authalic_radius(spherical_earth(6.4e6, 9.8)) == pytest.approx(6.4e6)
-
-
-def test_authalic_latitudes_keep_the_area_of_zones():
-    latitude = np.array([-90.0, -60.0, -10.0, 0.0, 33.0, 75.0, 90.0])
-    zone = np.array([float(cell_area((north - 90.0) / 2, 360.0, north + 90.0)) for north in latitude])
-    share = (1 + np.sin(np.deg2rad(authalic_latitude(latitude)))) / 2
-    np.testing.assert_allclose(share, zone / WHOLE_EARTH, atol=1e-12)
-    np.testing.assert_allclose(authalic_latitude(latitude, spherical_earth(1.0, 1.0)), latitude, atol=1e-6)
 
 
 @pytest.mark.parametrize("centre", [(0.0, 0.0), (179.9, 35.0), (20.0, -62.0), (300.0, 85.0)])

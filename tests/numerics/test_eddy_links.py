@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 from pyproj import Geod
 
-from setdrift.numerics.eddy_geometry import authalic_radius
+from setdrift.numerics.authalic import authalic_radius
 from setdrift.numerics.eddy_links import Pairs, cheapest_links, nearby_pairs
 
 

@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from setdrift.numerics.regridding import nearest_flag, regrid_bilinear
+from setdrift.numerics.regridding import regrid_bilinear
 
 ROWS = np.arange(-10.0, 10.1, 1.0)
 COLUMNS = np.arange(20.0, 40.1, 1.0)
@@ -127,21 +127,3 @@ def test_nothing_to_fill_from():
 def test_a_grid_that_does_not_fit_is_refused(shape, rows, columns, options, name):
     with pytest.raises(ValueError, match=name):
         regrid_bilinear(np.ones(shape), rows, columns, [0.5], [0.5], **options)
-
-
-def test_flags_come_from_the_cell_that_holds_the_point():
-    flags = np.arange(12, dtype=np.int8).reshape(3, 4)
-    found = nearest_flag(flags, [2.0, 1.0, 0.0], [0.0, 90.0, 180.0, 270.0], [0.1, 1.6], [-44.0, 46.0, -91.0])
-    assert found.dtype == np.int8
-    np.testing.assert_array_equal(found, [[8, 9, 11], [0, 1, 3]])
-
-
-def test_flags_of_a_regional_field_reach_half_a_cell_beyond_its_centres():
-    flags = np.array([[True, False], [False, True]])
-    np.testing.assert_array_equal(nearest_flag(flags, [0.0, 1.0], [10.0, 11.0], [1.4], [9.6, 11.4]), [[False, True]])
-
-
-@pytest.mark.parametrize(("row", "column", "name"), [(1.6, 10.0, "target_latitude"), (1.0, 12.0, "target_longitude")])
-def test_a_flag_is_not_invented_outside_the_field(row, column, name):
-    with pytest.raises(ValueError, match=name):
-        nearest_flag(np.ones((2, 2), bool), [0.0, 1.0], [10.0, 11.0], [row], [column])

@@ -6,7 +6,8 @@ import numpy as np
 import pytest
 from pyproj import Geod
 
-from setdrift.numerics.earth import cell_area, metres_per_degree
+from setdrift.numerics.authalic import authalic_latitude, authalic_radius
+from setdrift.numerics.earth import metres_per_degree
 
 GEOD = Geod(ellps="WGS84")
 LATITUDE = np.arange(-89.5, 89.6, 1.0)
@@ -37,9 +38,10 @@ def test_handbook_lengths(latitude, east, north):
 
 @pytest.mark.source("Karney (2013), area of a geodesic polygon: pyproj.Geod.polygon_area_perimeter")
 @pytest.mark.parametrize("latitude", [-75.0, -30.125, 0.0, 12.5, 45.0, 89.875])
-def test_cell_area(latitude):
+def test_area_of_a_cell_on_the_authalic_sphere(latitude):
     edge = np.linspace(0.0, 0.25, 201)
     south, north = np.full_like(edge, latitude - 0.125), np.full_like(edge, latitude + 0.125)
     area, _ = GEOD.polygon_area_perimeter(np.concatenate([edge, edge[::-1]]), np.concatenate([south, north]))
     # 200 geodesics along each parallel instead of the parallel itself: parts in 1e8
-    assert cell_area(latitude, 0.25, 0.25) == pytest.approx(area, rel=1e-6)
+    zone = np.diff(np.sin(np.deg2rad(authalic_latitude(np.array([latitude - 0.125, latitude + 0.125])))))
+    assert authalic_radius() ** 2 * np.deg2rad(0.25) * zone[0] == pytest.approx(area, rel=1e-6)

@@ -226,47 +226,5 @@ def metres_per_degree(latitude: ArrayLike, earth: Earth = WGS84) -> tuple[FloatA
     return east, meridional_radius(latitude, earth) * degree
 
 
-def cell_area(
-    latitude: ArrayLike, longitude_spacing: float, latitude_spacing: float, earth: Earth = WGS84
-) -> FloatArray:
-    """Return the exact area of grid cells bounded by meridians and parallels.
-
-    Parameters
-    ----------
-    latitude : array
-        Geodetic latitude of the cell centres, degrees north; cells are cut off at the poles.
-    longitude_spacing, latitude_spacing : float
-        Width and height of a cell, degrees.
-    earth : Earth
-        Earth model.
-
-    Returns
-    -------
-    array
-        m2; the shape of `latitude`.
-
-    References
-    ----------
-    Snyder (1987), Map Projections: A Working Manual, eq. 3-12 (the authalic q).
-    """
-    centre = np.asarray(latitude, dtype=np.float64)
-    north = np.minimum(centre + 0.5 * latitude_spacing, 90.0)
-    south = np.maximum(centre - 0.5 * latitude_spacing, -90.0)
-    zone = _authalic(north, earth) - _authalic(south, earth)
-    scale = 0.5 * earth.semi_major_axis**2 * np.deg2rad(longitude_spacing)
-    area: FloatArray = scale * zone
-    return area
-
-
-def _authalic(latitude: FloatArray, earth: Earth) -> FloatArray:
-    """Return Snyder's q, dimensionless: the area south of a parallel to a constant."""
-    sine = np.sin(np.deg2rad(latitude))
-    squared = earth.eccentricity_squared
-    eccentricity = np.sqrt(squared)
-    # atanh(e s) / e tends to s on a sphere
-    logarithm = np.arctanh(eccentricity * sine) / eccentricity if squared > 0.0 else sine
-    return (1.0 - squared) * (sine / (1.0 - squared * sine**2) + logarithm)
-
-
 def _radians(latitude: ArrayLike) -> FloatArray:
     return np.deg2rad(np.asarray(latitude, dtype=np.float64))

@@ -11,13 +11,12 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from setdrift.numerics.authalic import authalic_latitude, authalic_radius
 from setdrift.numerics.earth import WGS84, Earth, coriolis_parameter, metres_per_degree
 from setdrift.numerics.eddy_contours import contour_buffers, outer_contour
 from setdrift.numerics.eddy_flood import find_maxima
 from setdrift.numerics.eddy_geometry import (
     area_and_misfit,
-    authalic_latitude,
-    authalic_radius,
     project_points,
 )
 from setdrift.numerics.eddy_outlines import Bounds, Buffers, outermost_level

@@ -11,7 +11,7 @@ from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
 from scipy.spatial import KDTree
 
-from setdrift.numerics.eddy_geometry import authalic_radius
+from setdrift.numerics.authalic import authalic_radius
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]

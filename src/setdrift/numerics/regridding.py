@@ -68,47 +68,6 @@ def regrid_bilinear(
     return result
 
 
-def nearest_flag(
-    field: ArrayLike,
-    latitude: ArrayLike,
-    longitude: ArrayLike,
-    target_latitude: ArrayLike,
-    target_longitude: ArrayLike,
-) -> NDArray[np.generic]:
-    """Look up the cell of a flag field, such as a land mask, that holds each target point.
-
-    Parameters
-    ----------
-    field : (y, x) array
-        Flags of any type.
-    latitude : (y,) array
-        Cell centres, degrees north, ascending or descending.
-    longitude : (x,) array
-        Cell centres, degrees east, eastward in any convention.
-    target_latitude, target_longitude : (m,) and (n,) array
-        Axes of the target grid, degrees, any convention.
-
-    Returns
-    -------
-    (m, n) array
-        The flags, of the type of `field`.
-
-    Raises
-    ------
-    ValueError
-        If an axis does not match the field or is not monotonic, or a target lies more than half a cell
-        outside the field (no flag is known there).
-    """
-    flags, rows, columns = _ascending(field, latitude, longitude, periodic=False)
-    row, row_distance = _nearest(rows, np.asarray(target_latitude, dtype=np.float64))
-    column, column_distance = _nearest_around(columns, np.asarray(target_longitude, dtype=np.float64))
-    for name, distance, axis in (("latitude", row_distance, rows), ("longitude", column_distance, columns)):
-        if distance.size and axis.size > 1 and distance.max() > 0.5 * np.diff(axis).max() + 1e-6:
-            raise ValueError(f"target_{name} reaches {distance.max():g} degrees from the nearest cell centre")
-    found: NDArray[np.generic] = flags[np.ix_(row, column)]
-    return found
-
-
 def _ascending(
     field: ArrayLike, latitude: ArrayLike, longitude: ArrayLike, periodic: bool
 ) -> tuple[NDArray[np.generic], FloatArray, FloatArray]:
@@ -206,18 +165,3 @@ def _fill_from_nearest(
 def _unit_vectors(latitude: FloatArray, longitude: FloatArray) -> FloatArray:
     phi, lam = np.deg2rad(latitude), np.deg2rad(longitude)
     return np.column_stack([np.cos(phi) * np.cos(lam), np.cos(phi) * np.sin(lam), np.sin(phi)])
-
-
-def _nearest(axis: FloatArray, target: FloatArray) -> tuple[IndexArray, FloatArray]:
-    """Return the index of the nearest entry of an ascending axis and the distance to it."""
-    upper = np.clip(np.searchsorted(axis, target), 0, axis.size - 1)
-    lower = np.maximum(upper - 1, 0)
-    index = np.where(np.abs(target - axis[lower]) <= np.abs(target - axis[upper]), lower, upper)
-    return index, np.abs(target - axis[index])
-
-
-def _nearest_around(columns: FloatArray, target: FloatArray) -> tuple[IndexArray, FloatArray]:
-    """Return the nearest column on the circle of longitudes and the distance to it."""
-    around = np.append(columns, columns[0] + 360.0)
-    index, distance = _nearest(around, _within_turn(target, columns))
-    return index % columns.size, distance
