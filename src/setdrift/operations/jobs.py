@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime as dt
+import re
 import traceback
 from collections.abc import Callable
 from dataclasses import dataclass
@@ -128,6 +129,35 @@ RULES: dict[str, Callable[[Job, Announce], None]] = {
     "publish_eddies": _publish_eddies,
     "draw_bulletin": _draw_bulletin,
 }
+
+
+def unfinished_jobs(work: Path, since: dt.datetime) -> list[str]:
+    """Tell which jobs began and did not end well, from the logs.
+
+    Parameters
+    ----------
+    work : Path
+        Folder of the analysis's work files.
+    since : datetime
+        Logs that were last written before are left out.
+
+    Returns
+    -------
+    list of str
+        For each job its name, what stopped it, and its log.
+    """
+    logs = work / "logs"
+    written = sorted(log for log in logs.rglob("*.log") if log.stat().st_mtime >= since.timestamp())
+    told = []
+    for log in written:
+        # earlier runs are in the same log
+        last = log.read_text(encoding="utf-8").rpartition(": begins\n")[2]
+        if last.endswith(": ends\n"):
+            continue
+        error = re.search(r" ERROR \S+ [^:]*: (.*)", last)
+        reason = error[1] if error else "was stopped from outside: by someone, or by the system for lack of memory"
+        told.append(f"{log.relative_to(logs).with_suffix('').as_posix().replace('/', ' ')}: {reason}\n  log: {log}")
+    return told
 
 
 def run_job(job: Job, log: Path | None, show: Announce) -> None:
