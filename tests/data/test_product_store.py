@@ -5,10 +5,13 @@ from __future__ import annotations
 import contextlib
 import ctypes
 import datetime as dt
+import multiprocessing
 import os
 import shutil
 import stat
+import time
 from collections.abc import Callable, Iterator
+from multiprocessing.connection import Connection
 from pathlib import Path
 from typing import Any
 
@@ -17,7 +20,7 @@ import pytest
 import xarray as xr
 
 from setdrift.data import product_store
-from setdrift.data.configuration import Configuration
+from setdrift.data.configuration import Configuration, load_configuration
 from setdrift.data.conventions import DAILY_VARIABLES
 from setdrift.data.daily_product import DailyProduct
 from setdrift.data.days import days_between
@@ -180,6 +183,41 @@ def test_failure_at_any_object_leaves_no_temporary_file(
         monkeypatch.undo()
         assert not list(store.rglob("*.part"))
         assert seen(store) == ([0, 0], whole(dict.fromkeys(DAYS[:2], 0)))
+
+
+def publish_and_hang(config: Path, half_done: Connection) -> None:
+    """Publish a third day, and wait for ever amid an object."""
+
+    @contextlib.contextmanager
+    def hanging(path: Path) -> Iterator[Path]:
+        with replacing(path) as temporary:
+            yield temporary
+            half_done.send(temporary.name)
+            time.sleep(600)
+
+    product_store.replacing = hanging  # type: ignore[assignment]
+    publish(load_configuration(config), dict.fromkeys(DAYS, 0))
+
+
+def test_killed_publisher_leaves_nothing_for_good(configure: Callable[..., Configuration]) -> None:
+    configuration = configure()
+    store = configuration.products / "daily.zarr"
+    publish(configuration, dict.fromkeys(DAYS[:2], 0))
+    context = multiprocessing.get_context("spawn")
+    here, there = context.Pipe(duplex=False)
+    publisher = context.Process(target=publish_and_hang, args=(configuration.path, there), daemon=True)
+    publisher.start()
+    there.close()
+    left = here.recv()
+    publisher.kill()
+    publisher.join()
+    publisher.close()
+    here.close()
+    assert [path.name for path in store.rglob(".*.part")] == [left]
+    assert seen(store) == ([0, 0], whole(dict.fromkeys(DAYS[:2], 0)))
+    publish(configuration, dict.fromkeys(DAYS, 0))
+    assert not list(store.rglob(".*.part"))
+    assert seen(store) == ([0, 0, 0], whole(dict.fromkeys(DAYS, 0)))
 
 
 def test_failure_while_a_store_is_built_leaves_the_old_one(

@@ -19,7 +19,7 @@ from setdrift.data.configuration import Configuration
 from setdrift.data.daily_layout import day_dataset, encoding, layout_digest, template
 from setdrift.data.grids import analysis_grid
 from setdrift.data.metadata import DAILY_PRODUCT, global_attributes
-from setdrift.data.product_store import commit_objects, is_chunk, replace_store
+from setdrift.data.product_store import commit_objects, is_chunk, replace_store, sweep
 
 PUBLICATION_KEYS = {"history", "date_created"}
 """Global attributes that tell when the store was written, not what it is."""
@@ -75,6 +75,7 @@ class DailyProduct:
         dict
             Days `added`, `rewritten` and `retired`.
         """
+        sweep(self.path)
         published = self._published()
         kept = [day for day in published if day in sources]
         account = {

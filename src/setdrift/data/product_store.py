@@ -51,6 +51,18 @@ def commit_objects(store: Path, objects: Mapping[str, bytes]) -> int:
     return written
 
 
+def sweep(store: Path) -> None:
+    """Take away the temporary files that a killed publisher left in a store; only one may publish at a time.
+
+    Parameters
+    ----------
+    store : Path
+        Folder of the store; need not exist.
+    """
+    for left in store.rglob(".*.part"):
+        left.unlink()
+
+
 def is_chunk(key: str) -> bool:
     """Return whether an object holds values, not metadata."""
     return key.rsplit("/", 1)[-1] not in METADATA_NAMES
