@@ -10,20 +10,9 @@ from typing import Any
 
 import pytest
 import yaml
+from small_analysis import SMALL_ANALYSIS
 
 from setdrift.data.configuration import Configuration, load_configuration
-
-SMALL_ANALYSIS: dict[str, Any] = {
-    "analysis": "small_sea",
-    "output": "results",
-    "period": {"start": "2031-03-01", "end": "2031-03-03"},
-    "grid": {"west": -30, "east": -26, "south": 8, "north": 11, "spacing": 0.5},
-    "altimeters": {"heron": {"files": "heron/*.nc", "noise_m": 0.02}},
-    "mean_dynamic_topography": {"file": "mean.nc"},
-    "land": {"file": "land.nc"},
-    "mapping": {"window_days": 2},
-    "block_days": 2,
-}
 
 
 def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:

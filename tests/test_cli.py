@@ -8,7 +8,7 @@ from pathlib import Path
 
 import pytest
 import yaml
-from conftest import SMALL_ANALYSIS
+from small_analysis import SMALL_ANALYSIS
 
 from setdrift import __version__, cli
 from setdrift.cli import FAILED, MISUSED, main

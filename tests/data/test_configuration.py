@@ -12,9 +12,9 @@ from typing import Any
 import annotated_types
 import pytest
 import yaml
-from conftest import SMALL_ANALYSIS
 from pydantic import BaseModel
 from pydantic.fields import FieldInfo
+from small_analysis import SMALL_ANALYSIS
 
 from setdrift.data.configuration import Configuration, load_configuration
 from setdrift.data.digests import digest

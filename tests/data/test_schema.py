@@ -10,7 +10,7 @@ from typing import Any
 
 import jsonschema
 import pytest
-from conftest import SMALL_ANALYSIS
+from small_analysis import SMALL_ANALYSIS
 
 from setdrift.data.schema import PATH, configuration_schema
 from setdrift.data.yaml_files import read_yaml
