@@ -131,7 +131,7 @@ def _draw_frame(figure: Figure, axes: Axes, shading: Any, day: xr.Dataset, confi
     axes.set_xlim(float(day.longitude[0]) - half, float(day.longitude[-1]) + half)
     axes.set_ylim(float(day.latitude[0]) - half, float(day.latitude[-1]) + half)
     axes.tick_params(colors=INK, labelsize=8, direction="out", length=3)
-    axes.xaxis.set_major_formatter(lambda value, _: _degrees((value + 180.0) % 360.0 - 180.0, "E", "W"))
+    axes.xaxis.set_major_formatter(lambda value, _: _longitude_label(value))
     axes.yaxis.set_major_formatter(lambda value, _: _degrees(value, "N", "S"))
     if configuration.grid.south < 0.0 < configuration.grid.north:
         axes.axhline(0.0, color=INK, linewidth=0.6, linestyle=(0, (1, 3)))
@@ -144,6 +144,10 @@ def _draw_frame(figure: Figure, axes: Axes, shading: Any, day: xr.Dataset, confi
         0.075, box.y1 + 0.018, f"{configuration.analysis}: surface currents", color=INK, fontsize=14, weight="bold"
     )
     figure.text(0.875, box.y1 + 0.018, title, color=INK, fontsize=11, ha="right")
+
+
+def _longitude_label(value: float) -> str:
+    return _degrees((value + 180.0) % 360.0 - 180.0, "E", "W")
 
 
 def _degrees(value: float, positive: str, negative: str) -> str:
