@@ -52,10 +52,10 @@ def test_every_eddy_of_the_day_is_outlined_and_counted(analysed_sea: Path, confi
     assert today.size > 0
     entries = [entry.get_text() for entry in figure.legends[0].get_texts()]
     assert entries[:2] == [f"anticyclonic eddy ({(today == 1).sum()})", f"cyclonic eddy ({(today == -1).sum()})"]
-    outlines = [l for l in figure.axes[0].lines if l.get_linewidth() == 1.5 and l.get_marker() == "None"]
-    assert sorted(line.get_color() for line in outlines) == sorted(
-        bulletin.ROTATION[int(polarity)][0] for polarity in today
-    )
+    # the dots at the ends of the tails are lines with a marker
+    outlines = [x for x in figure.axes[0].lines if x.get_linewidth() == 1.5 and x.get_marker() == "None"]
+    expected = [bulletin.ROTATION[int(polarity)][0] for polarity in today]
+    assert sorted(str(line.get_color()) for line in outlines) == sorted(expected)
 
 
 def test_unobserved_sea_is_hatched(analysed_sea: Path, configure: Configure) -> None:
