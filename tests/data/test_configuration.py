@@ -27,6 +27,7 @@ Key = tuple[str, ...]
 WHOLE: dict[str, Any] = SMALL_ANALYSIS | {
     "altimeters": {"heron": {"files": "heron/*.nc", "variables": {}, "good": {"variable": "bits", "values": [0]}}},
     "land": {"file": "land.nc"},
+    "depth": {"file": "depth.nc"},
     "editing": {},
     "mapping": {},
     "currents": {},

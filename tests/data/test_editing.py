@@ -12,12 +12,15 @@ from hypothesis import strategies as st
 
 from setdrift.data.alongtrack import AlongTrack, concatenate
 from setdrift.data.ancillary import LandMask
+from setdrift.data.bathymetry import SeaFloor
 from setdrift.data.configuration import Editing
 from setdrift.data.editing import REASONS, edit, number_passes
 from setdrift.data.grids import Area
 
 LAND = LandMask(np.tile([True, False, False, False], (10, 1)), np.arange(5.0, 15.0), np.arange(-30.0, -26.0))
 AREA = Area(-32.0, 6.0, 6.0, 13.0)
+# a bank, 40 m deep, between 29.5 and 28.5 W; the sea elsewhere is 4 km deep
+FLOOR = SeaFloor(np.tile([4000.0, 40.0, 4000.0, 4000.0], (10, 1)), LAND.latitude, LAND.longitude)
 SETTINGS = Editing()
 
 
@@ -52,13 +55,14 @@ def changed(track: AlongTrack, name: str, index: int, value: Any) -> AlongTrack:
         ("outside_area", "latitude", 5.5),
         ("outside_area", "longitude", 150.0),
         ("land", "longitude", -30.0),
+        ("shallow", "longitude", -29.0),
         ("implausible", "sea_level_anomaly", -2.5),
         ("spike", "sea_level_anomaly", 0.9),
         ("duplicate", "time", MARCH_FIRST + 49.0),
     ],
 )
 def test_each_test_drops_its_own(reason: str, name: str, value: Any) -> None:
-    result = edit(changed(pass_of(), name, 50, value), SETTINGS, LAND, AREA)
+    result = edit(changed(pass_of(), name, 50, value), SETTINGS, LAND, AREA, FLOOR)
     assert result.dropped == dict.fromkeys(REASONS, 0) | {reason: 1}
     assert result.received == 120
     assert len(result.track) == 119
@@ -70,6 +74,7 @@ def test_the_first_failing_test_counts() -> None:
     track = pass_of()
     order = [
         ("sea_level_anomaly", 2.5, "implausible"),
+        ("longitude", -29.0, "shallow"),
         ("longitude", -30.0, "land"),
         ("latitude", 5.5, "outside_area"),
         ("flagged", True, "flagged"),
@@ -79,7 +84,43 @@ def test_the_first_failing_test_counts() -> None:
     ]
     for name, value, reason in order:
         track = changed(track, name, 50, value)
-        assert edit(track, SETTINGS, LAND, AREA).dropped == dict.fromkeys(REASONS, 0) | {reason: 1}
+        assert edit(track, SETTINGS, LAND, AREA, FLOOR).dropped == dict.fromkeys(REASONS, 0) | {reason: 1}
+
+
+def test_sea_is_shallow_only_where_its_floor_is_given_and_above_the_limit() -> None:
+    track = changed(pass_of(), "longitude", slice(40, 60), -29.0)
+    assert len(edit(track, SETTINGS, LAND, AREA).track) == 120
+    assert edit(track, SETTINGS, LAND, AREA, FLOOR).dropped["shallow"] == 20
+    assert len(edit(track, Editing(least_depth_m=30.0), LAND, AREA, FLOOR).track) == 120
+
+
+def test_two_points_between_islands_are_a_short_segment() -> None:
+    longitude = np.full(120, -28.0)
+    longitude[40:70] = -30.0
+    longitude[[54, 55]] = -28.0
+    result = edit(pass_of(longitude=longitude), SETTINGS, LAND, AREA)
+    assert {reason: n for reason, n in result.dropped.items() if n} == {"land": 28, "short_segment": 2}
+    assert len(edit(pass_of(longitude=longitude), Editing(shortest_segment=2), LAND, AREA).track) == 92
+    longitude[56] = -28.0
+    assert len(edit(pass_of(longitude=longitude), SETTINGS, LAND, AREA).track) == 93
+
+
+def test_what_a_dropped_spike_parts_is_no_segment() -> None:
+    track = pass_of()
+    track.sea_level_anomaly[[48, 51]] += 0.8
+    result = edit(track, SETTINGS, LAND, AREA)
+    assert (result.dropped["spike"], len(result.track)) == (2, 118)
+
+
+def test_a_segment_that_midnight_or_the_area_cuts_is_not_short() -> None:
+    at_midnight = pass_of(2, MARCH_FIRST)
+    assert len(edit(concatenate([at_midnight, pass_of(start=MARCH_FIRST + 600.0)]), SETTINGS, LAND, AREA).track) == 122
+    at_noon = pass_of(2, MARCH_FIRST + 43200.0)
+    assert edit(concatenate([at_noon, pass_of()]), SETTINGS, LAND, AREA).dropped["short_segment"] == 2
+    # only the last two points of a pass are in the area
+    clipped = pass_of(60, MARCH_FIRST + 43200.0, latitude=6.0 - 0.04 * np.arange(58.0, -2.0, -1.0))
+    result = edit(concatenate([clipped, pass_of()]), SETTINGS, LAND, AREA)
+    assert (result.dropped["outside_area"], len(result.track)) == (58, 122)
 
 
 @given(seed=st.integers(0, 2**31), count=st.integers(0, 150))
@@ -96,7 +137,7 @@ def test_counts_always_add_up(seed: int, count: int) -> None:
     track.flagged[rng.random(count) < 0.1] = True
     if count:
         track = track.select(rng.integers(0, count, 2 * count))
-    result = edit(track, SETTINGS, LAND, AREA)
+    result = edit(track, SETTINGS, LAND, AREA, FLOOR if seed % 2 else None)
     assert result.received == len(track) == len(result.track) + sum(result.dropped.values())
     assert np.all(np.diff(result.track.time) > 0)
     for column in (result.track.latitude, result.track.longitude, result.track.sea_level_anomaly):

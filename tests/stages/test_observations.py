@@ -166,6 +166,31 @@ def test_changed_land_makes_days_again(sea: Path, configure: Configure) -> None:
     assert days["2031-03-01"]["dropped"]["land"] == kept - days["2031-03-01"]["kept"]
 
 
+def test_changed_depth_makes_observation_days_again(sea: Path, configure: Configure) -> None:
+    deep, bank = np.full((2, 2), 4000.0), np.full((2, 2), 20.0)
+    write_depth(sea / "depth.nc", deep)
+    configuration = configure(depth={"file": "depth.nc"})
+    assert gather(configuration)["2031-03-01"]["dropped"]["shallow"] == 0
+    assert rewritten(configuration) == set()
+    write_depth(sea / "depth.nc", bank)
+    assert len(rewritten(configuration)) == 7
+    assert gather(configuration)["2031-03-01"]["dropped"]["shallow"] == 40
+    assert len(rewritten(configure(depth={"file": "depth.nc"}, editing={"least_depth_m": 10}))) == 7
+    assert gather(configuration)["2031-03-01"]["dropped"]["shallow"] == 40
+    assert len(rewritten(configure())) == 7
+
+
+def write_depth(path: Path, depth: np.ndarray) -> None:
+    """Write depths on cells of 20 degrees round the sea."""
+    with netCDF4.Dataset(path, "w") as file:
+        for name, values, units in (("y", [0.0, 20.0], "degrees_north"), ("x", [-40.0, -20.0], "degrees_east")):
+            file.createDimension(name, 2)
+            file.createVariable(name, "f8", (name,)).units = units
+            file[name][:] = values
+        file.createVariable("floor", "f8", ("y", "x")).setncatts({"units": "m", "positive": "down"})
+        file["floor"][:] = depth
+
+
 def test_file_over_midnight_is_read_once_a_block(
     sea: Path, configure: Configure, monkeypatch: pytest.MonkeyPatch
 ) -> None:

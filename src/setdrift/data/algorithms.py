@@ -14,7 +14,7 @@ from setdrift.data.digests import digest
 from setdrift.data.grids import Grid, analysis_grid, observation_area, working_grid
 
 VERSIONS = {
-    "observations": 1,
+    "observations": 2,
     "fixed": 1,
     "maps": 1,
     "dynamic_topography": 1,
@@ -54,7 +54,9 @@ def _reading(configuration: Configuration) -> list[Any]:
     reading = {
         name: a.model_dump(mode="json", exclude={"files", "noise_m"}) for name, a in configuration.altimeters.items()
     }
-    return [reading, configuration.editing, str(observation_area(configuration))]
+    fields = [(configuration.land or configuration.mean_dynamic_topography).variable]
+    fields += [configuration.depth.variable] if configuration.depth else []
+    return [reading, configuration.editing, str(observation_area(configuration)), fields]
 
 
 def _fixed(configuration: Configuration) -> list[Any]:

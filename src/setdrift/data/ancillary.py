@@ -29,14 +29,15 @@ class GriddedField:
         Values, NaN where missing.
     latitude, longitude : 1-D array
         Degrees, both ascending; longitudes are continuous and may leave -180..180.
-    standard_name : str or None
-        CF standard name of the file's variable.
+    standard_name, positive : str or None
+        CF attributes of the file's variable.
     """
 
     field: Floats
     latitude: Floats
     longitude: Floats
     standard_name: str | None = None
+    positive: str | None = None
 
 
 @dataclass(frozen=True)
@@ -68,10 +69,31 @@ class LandMask:
         (n,) array of bool
             Whether the nearest cell is land. Beyond the mask's cells there is no telling: not land.
         """
-        west = self.longitude[0] - (self.longitude[1] - self.longitude[0]) / 2
-        column, across = _nearest((np.asarray(longitude) - west) % 360.0 + west, self.longitude)
-        row, along = _nearest(np.asarray(latitude), self.latitude)
-        return np.asarray(self.land[row, column] & across & along)
+        row, column, within = nearest_cells(longitude, latitude, self.longitude, self.latitude)
+        return np.asarray(self.land[row, column] & within)
+
+
+def nearest_cells(
+    longitude: Floats, latitude: Floats, columns: Floats, rows: Floats
+) -> tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.bool_]]:
+    """Find the grid cells that positions lie in.
+
+    Parameters
+    ----------
+    longitude, latitude : (n,) array
+        Degrees, any longitude convention.
+    columns, rows : 1-D array
+        Longitudes and latitudes of the cells' centres, degrees, ascending.
+
+    Returns
+    -------
+    tuple of (n,) arrays
+        Row and column of the nearest cell, and whether the position lies in it, not beyond the outermost cells.
+    """
+    west = columns[0] - (columns[1] - columns[0]) / 2
+    column, across = _nearest((np.asarray(longitude) - west) % 360.0 + west, columns)
+    row, along = _nearest(np.asarray(latitude), rows)
+    return row, column, across & along
 
 
 def _nearest(position: Floats, centres: Floats) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
@@ -117,9 +139,9 @@ def load_field(
         plain = units == "1" and attribute(found, "units") is None
         values = floats(found) if plain else in_units(found, str(path), units)
         values = _two_dimensional(values, found, _coordinate(file, found, "latitude").dimensions[0], str(path))
-        standard_name = attribute(found, "standard_name")
+        attributes = (attribute(found, "standard_name"), attribute(found, "positive"))
     _check_axes(str(path), latitude, longitude)
-    return _ascending(values, latitude, longitude, standard_name)
+    return GriddedField(*_ascending(values, latitude, longitude), *attributes)
 
 
 def mean_dynamic_topography(configuration: Configuration) -> GriddedField:
@@ -234,9 +256,8 @@ def _check_axes(where: str, latitude: Floats, longitude: Floats) -> None:
             )
 
 
-def _ascending(values: Floats, latitude: Floats, longitude: Floats, standard_name: str | None) -> GriddedField:
+def _ascending(values: Floats, latitude: Floats, longitude: Floats) -> tuple[Floats, Floats, Floats]:
     longitude = np.unwrap(longitude, period=360.0)
     rows = slice(None, None, 1 if latitude[1] > latitude[0] else -1)
     columns = slice(None, None, 1 if longitude[1] > longitude[0] else -1)
-    field = np.ascontiguousarray(values[rows, columns])
-    return GriddedField(field, latitude[rows].copy(), longitude[columns].copy(), standard_name)
+    return np.ascontiguousarray(values[rows, columns]), latitude[rows].copy(), longitude[columns].copy()

@@ -173,6 +173,10 @@ class Editing(Section):
     spike_limit: Positive = Field(default=5.0, description="robust standard deviations from the running median")
     spike_floor_m: Positive = Field(default=0.10, description="departures below this are never spikes")
     pass_gap_s: Positive = Field(default=300.0, description="a longer gap in time starts a new pass")
+    shortest_segment: int = Field(
+        default=3, ge=0, le=1000, description="fewer points alone between gaps are dropped; 0: none are"
+    )
+    least_depth_m: Positive = Field(default=100.0, description="shallower sea is left out; used only with `depth`")
 
 
 class Mapping(Section):
@@ -272,6 +276,9 @@ class Configuration(Section):
     mean_dynamic_topography: Source
     land: Source | None = Field(
         default=None, description="land mask; left out: land is where the mean dynamic topography is missing"
+    )
+    depth: Source | None = Field(
+        default=None, description="depth or height of the sea floor; left out: shallow sea is used like any other"
     )
     editing: Editing = Editing()
     mapping: Mapping = Mapping()

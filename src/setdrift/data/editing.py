@@ -10,11 +10,13 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from setdrift.data.alongtrack import AlongTrack
+from setdrift.data.alongtrack import DAY_S, AlongTrack
 from setdrift.data.ancillary import LandMask
+from setdrift.data.bathymetry import SeaFloor
 from setdrift.data.configuration import Editing
 from setdrift.data.grids import Area
 from setdrift.numerics.passes import infer_passes
+from setdrift.numerics.segments import in_short_segments
 from setdrift.numerics.spikes import find_spikes
 
 REASONS = (
@@ -24,9 +26,11 @@ REASONS = (
     "flagged",
     "outside_area",
     "land",
+    "shallow",
     "implausible",
     "spike",
     "duplicate",
+    "short_segment",
 )
 """Why observations are dropped, in the order of the tests: each counts once, by the first test it fails."""
 
@@ -53,11 +57,11 @@ class Edited:
     dropped: dict[str, int]
 
 
-def edit(track: AlongTrack, settings: Editing, land: LandMask, area: Area) -> Edited:
+def edit(track: AlongTrack, settings: Editing, land: LandMask, area: Area, floor: SeaFloor | None = None) -> Edited:
     """Drop the observations that fail a test.
 
     The passes are those of the observations given, so one that is cut (by midnight, say) counts as two where
-    the file does not number them.
+    the file does not number them. A segment that midnight or the area's edge cuts is never too short.
 
     Parameters
     ----------
@@ -69,6 +73,8 @@ def edit(track: AlongTrack, settings: Editing, land: LandMask, area: Area) -> Ed
         Where land is.
     area : Area
         Where observations are used.
+    floor : SeaFloor, optional
+        How deep the sea is; left out, none is too shallow.
 
     Returns
     -------
@@ -89,11 +95,15 @@ def edit(track: AlongTrack, settings: Editing, land: LandMask, area: Area) -> Ed
     track = _with_passes(track.select(np.argsort(track.time, kind="stable")), settings.pass_gap_s)
     drop("not_finite", lambda t: ~np.isfinite(t.sea_level_anomaly))
     drop("flagged", lambda t: t.flagged)
+    cuts = _cuts(track, area)
     drop("outside_area", lambda t: ~area.holds(t.longitude, t.latitude))
     drop("land", lambda t: land.is_land(t.longitude, t.latitude))
+    if floor is not None:
+        drop("shallow", lambda t: floor.is_shallow(t.longitude, t.latitude, settings.least_depth_m))
     drop("implausible", lambda t: abs(t.sea_level_anomaly) > settings.largest_anomaly_m)
     drop("spike", lambda t: _spikes(t, settings))
     drop("duplicate", lambda t: np.diff(np.rint(t.time / SAME_TIME_S), prepend=-np.inf) == 0)
+    drop("short_segment", lambda t: in_short_segments(t.time, settings.shortest_segment, cuts))
     return Edited(track, received, dropped)
 
 
@@ -125,6 +135,15 @@ def number_passes(track: AlongTrack, gap_s: float) -> NDArray[np.int64]:
 
 def _with_passes(track: AlongTrack, gap_s: float) -> AlongTrack:
     return dataclasses.replace(track, pass_number=number_passes(track, gap_s), cycle_number=None)
+
+
+def _cuts(track: AlongTrack, area: Area) -> NDArray[np.float64]:
+    """Return the times, ascending, of points outside the area and of the midnights round all points."""
+    if len(track) == 0:
+        return track.time
+    outside = track.time[~area.holds(track.longitude, track.latitude)]
+    midnights = np.arange(track.time[0] // DAY_S, track.time[-1] // DAY_S + 2) * DAY_S
+    return np.sort(np.concatenate([outside, midnights]))
 
 
 def _spikes(track: AlongTrack, settings: Editing) -> NDArray[np.bool_]:

@@ -7,16 +7,14 @@ import itertools
 import numpy as np
 from numpy.typing import NDArray
 
+from setdrift.numerics.segments import BREAK_STEPS, usual_step
+
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
 Booleans = NDArray[np.bool_]
 
 NORMAL_SCALE = 1.4826
 """Standard deviation of a normal law over its median absolute deviation."""
-
-BREAK_STEPS = 5.0
-"""A step in time above so many usual steps (islands, flagged stretches) breaks the window of the median,
-unless it cuts off too few points for a median of their own."""
 
 
 def find_spikes(
@@ -72,11 +70,10 @@ def find_spikes(
 
 def _windows(time: Floats, passes: Integers, half: int) -> tuple[Integers, Integers]:
     """Return for each point the first and last index that its window may reach to."""
-    # the ends of its unbroken stretch, or of its pass where the stretch is too short to judge itself
+    # a gap (islands, flagged stretches) breaks the window, unless it cuts off too few points for a median of their own
     step = np.diff(time)
     new_pass = np.diff(passes) != 0
-    usual = step[~new_pass & (step > 0.0)]
-    broken = step > BREAK_STEPS * np.median(usual) if usual.size else np.zeros(step.size, dtype=bool)
+    broken = step > BREAK_STEPS * usual_step(step[~new_pass])
     first, last = _bounds(np.concatenate([[True], new_pass | broken]))
     pass_first, pass_last = _bounds(np.concatenate([[True], new_pass]))
     short = last - first < half

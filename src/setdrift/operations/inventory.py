@@ -227,7 +227,7 @@ def _look(path: Path, altimeter: Altimeter) -> dict[str, Any]:
 
 def _fixed_digests(configuration: Configuration, scan: _Scan) -> dict[str, str | None]:
     """Return the digests of the gridded files."""
-    digests: dict[str, str | None] = {"mean_dynamic_topography": None, "land": None}
+    digests: dict[str, str | None] = {"mean_dynamic_topography": None, "land": None, "depth": None}
     for section in digests:
         source = getattr(configuration, section)
         if source is None:

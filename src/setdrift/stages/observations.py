@@ -15,7 +15,8 @@ import xarray as xr
 
 from setdrift.data.algorithms import VERSIONS
 from setdrift.data.alongtrack import DAY_S, AlongTrack, concatenate, read_alongtrack
-from setdrift.data.ancillary import land_mask
+from setdrift.data.ancillary import LandMask, land_mask
+from setdrift.data.bathymetry import SeaFloor, sea_floor
 from setdrift.data.configuration import Configuration
 from setdrift.data.day_store import DayStore, refresh_days
 from setdrift.data.days import Block, day_number, days_between
@@ -92,11 +93,16 @@ class _Gatherer:
             configuration.editing,
             dataclasses.asdict(self._area),
             [land.variable, fixed["land"] or fixed["mean_dynamic_topography"]],
+            [configuration.depth.variable if configuration.depth else None, fixed["depth"]],
         )
 
     @functools.cached_property
-    def _land(self) -> Any:
+    def _land(self) -> LandMask:
         return land_mask(self._configuration)
+
+    @functools.cached_property
+    def _floor(self) -> SeaFloor | None:
+        return sea_floor(self._configuration)
 
     def made_from(self, day: dt.date) -> str:
         """Return the digest of all that a day depends on."""
@@ -122,7 +128,9 @@ class _Gatherer:
                 else:
                     tracks.append(_of_day(track, day, entry))
             if tracks:
-                edited[name] = edit(concatenate(tracks), self._configuration.editing, self._land, self._area)
+                edited[name] = edit(
+                    concatenate(tracks), self._configuration.editing, self._land, self._area, self._floor
+                )
         receipt = _counts(edited) | {"files": len(files) - len(set_aside), "set_aside": set_aside}
         return _dataset(edited, list(self._configuration.altimeters), receipt)
 
