@@ -211,12 +211,12 @@ DAMAGE: dict[str, tuple[Callable[[Path], object], str]] = {
     "no_records": (lambda path: write_plain(path, 0), "holds no records"),
     "two_dimensions": (
         lambda path: instead(path, "level", "f8", {"sample": 40, "fast": 20}, LEVEL, "m"),
-        r"level has 2 dimensions \(sample, fast\)",
+        r"level has 2 dimensions \(sample, fast\), but variable clock has 1 dimension \(sample\); name",
     ),
-    "scalar": (lambda path: instead(path, "x", "f8", {}, "longitude", "degrees"), "x has 0 dimensions"),
+    "scalar": (lambda path: instead(path, "x", "f8", {}, "longitude", "degrees"), "variable x has 0 dimensions"),
     "lengths": (
         lambda path: instead(path, "y", "f8", {"other": 3}, "latitude", "degrees"),
-        "y has 3 values for 40 times",
+        "y has 3 values for 40 of level",
     ),
     "words": (lambda path: instead(path, "level", str, {"sample": 40}, LEVEL, "m"), "cannot be read"),
 }

@@ -13,10 +13,10 @@ import netCDF4
 import numpy as np
 from numpy.typing import NDArray
 
+from setdrift.data.alongtrack_layouts import layout_of
 from setdrift.data.configuration import Altimeter, GoodValues
 from setdrift.data.days import from_day_number
 from setdrift.data.netcdf import Floats, find_variable, floats, in_units, opened, seconds_since_1970
-from setdrift.errors import SetdriftError
 
 DAY_S = 86400.0
 LAST_TIME_S = 230 * 365.25 * DAY_S  # year 2200: times are believed from 1970 to here
@@ -29,6 +29,8 @@ STANDARD_NAMES: dict[str, tuple[tuple[str, ...], str]] = {
     "longitude": (("longitude",), ""),
     "sea_level_anomaly": (("sea_surface_height_above_mean_sea_level", "sea_surface_height_above_sea_level"), ""),
 }
+
+COUNTERS = ("pass_number", "cycle_number")
 
 
 @dataclass(frozen=True)
@@ -83,19 +85,20 @@ def concatenate(tracks: Sequence[AlongTrack]) -> AlongTrack:
 def read_alongtrack(path: Path, altimeter: Altimeter) -> AlongTrack:
     """Read a file of along-track sea level.
 
-    Variables are found by the names in the configuration, else by CF standard name (time also by axis).
+    Variables are found by the names in the configuration, else by CF standard name (time also by axis), in the root
+    and in all groups.
 
     Parameters
     ----------
     path : Path
-        The file: NetCDF with variables of one dimension.
+        The file: NetCDF in one of the layouts of `setdrift.data.alongtrack_layouts`.
     altimeter : Altimeter
         How this altimeter's files are read.
 
     Returns
     -------
     AlongTrack
-        Every record of the file, none edited.
+        Every observation of the file, none edited.
 
     Raises
     ------
@@ -103,23 +106,27 @@ def read_alongtrack(path: Path, altimeter: Altimeter) -> AlongTrack:
         The file cannot be read, or a variable, its units or its shape is not as needed.
     """
     with opened(path) as file:
-        located = _locate(file, altimeter)
-        time = _believable(seconds_since_1970(located["time"], str(path)))
-        latitude = in_units(located["latitude"], str(path), "degrees")
-        longitude = in_units(located["longitude"], str(path), "degrees")
-        sea_level = in_units(located["sea_level_anomaly"], str(path), "m")
+        source = _Source(file, altimeter)
+        time = source.time()
+        latitude, longitude = source.read("latitude", "degrees"), source.read("longitude", "degrees")
+        sea_level = source.read("sea_level_anomaly", "m")
         for name in altimeter.subtract:
-            sea_level = sea_level - in_units(located[f"subtract {name}"], str(path), "m")
+            sea_level = sea_level - source.read(f"subtract {name}", "m")
         for name in altimeter.add:
-            sea_level = sea_level + in_units(located[f"add {name}"], str(path), "m")
+            sea_level = sea_level + source.read(f"add {name}", "m")
         flagged = np.zeros(time.size, dtype=bool)
         if altimeter.good is not None:
-            flagged = _flagged(floats(located["good"]), altimeter.good)
-        counters = {role: _whole_numbers(located.get(role)) for role in ("pass_number", "cycle_number")}
-        found = {role: variable.name for role, variable in located.items()}
+            flagged = _flagged(source.numbers("good"), altimeter.good)
+        counters = {role: _whole_numbers(source.numbers(role)) for role in COUNTERS if role in source.names}
+        layout = source.layout
     latitude[~(abs(latitude) <= 90.0)] = np.nan
     longitude[~(abs(longitude) <= 360.0)] = np.nan
-    return AlongTrack(time, latitude, (longitude + 180.0) % 360.0 - 180.0, sea_level, flagged, **counters, found=found)
+    longitude = (longitude + 180.0) % 360.0 - 180.0
+    track = AlongTrack(time, latitude, longitude, sea_level, flagged, **counters, found=source.names)
+    if len(layout.shape) < 2:
+        return track
+    # the rows of a table are filled up to one length: that is not an observation
+    return track.select(~(np.isnan(latitude) & np.isnan(longitude) & np.isnan(sea_level)))
 
 
 def read_time_span(path: Path, altimeter: Altimeter) -> tuple[dt.date, dt.date] | None:
@@ -143,44 +150,83 @@ def read_time_span(path: Path, altimeter: Altimeter) -> tuple[dt.date, dt.date] 
         The file cannot be read, or lacks a variable needed.
     """
     with opened(path) as file:
-        time = _believable(seconds_since_1970(_locate(file, altimeter)["time"], str(path)))
+        time = _Source(file, altimeter).time()
     if np.all(np.isnan(time)):
         return None
     return from_day_number(int(np.nanmin(time) // DAY_S)), from_day_number(int(np.nanmax(time) // DAY_S))
 
 
-def _locate(file: netCDF4.Dataset, altimeter: Altimeter) -> dict[str, Any]:
-    """Find every variable needed, and check that all are series of one length."""
-    located: dict[str, Any] = {}
-    for role, (standard_names, axis) in STANDARD_NAMES.items():
-        given = getattr(altimeter.variables, role)
-        key = f"this altimeter's variables.{role}"
-        located[role] = find_variable(file, role, given, standard_names, key, axis)[1]
-    others = {f"subtract {name}": name for name in altimeter.subtract}
-    others |= {f"add {name}": name for name in altimeter.add}
-    if altimeter.good is not None:
-        others["good"] = altimeter.good.variable
-    for role in ("pass_number", "cycle_number"):
-        if getattr(altimeter.variables, role) is not None:
-            others[role] = getattr(altimeter.variables, role)
-    for role, name in others.items():
-        located[role] = find_variable(file, role, name, (), f"this altimeter's {role.split()[0]}")[1]
-    _check_shapes(file.filepath(), located)
-    return located
+@dataclass(frozen=True)
+class Wanted:
+    """A variable that an altimeter's files must hold: its role, the name given, and what else it is known by."""
+
+    role: str
+    given: str | None
+    standard_names: tuple[str, ...]
+    axis: str
+    key: str
 
 
-def _check_shapes(where: str, located: dict[str, Any]) -> None:
-    for variable in located.values():
-        if variable.ndim != 1:
-            what = f"variable {variable.name} has {variable.ndim} dimensions ({', '.join(variable.dimensions)})"
-            raise SetdriftError(where, what, "give one-dimensional series: one value for each observation")
-    length = located["time"].shape[0]
-    for variable in located.values():
-        if variable.shape[0] != length:
-            what = f"variable {variable.name} has {variable.shape[0]} values for {length} times"
-            raise SetdriftError(where, what, "name variables of one length in the configuration")
-    if length == 0:
-        raise SetdriftError(where, "holds no records", "nothing need be done if that is as expected")
+def wanted_variables(altimeter: Altimeter) -> list[Wanted]:
+    """Return what is sought in each file of an altimeter.
+
+    Parameters
+    ----------
+    altimeter : Altimeter
+        How this altimeter's files are read.
+
+    Returns
+    -------
+    list of Wanted
+        Time, position and sea level, then the offsets of time, corrections, flag and pass numbers that are named.
+    """
+    names = altimeter.variables
+    wanted = [
+        Wanted(role, getattr(names, role), standard_names, axis, f"this altimeter's variables.{role}")
+        for role, (standard_names, axis) in STANDARD_NAMES.items()
+    ]
+    others = {role: getattr(names, role) for role in ("time_offset", *COUNTERS)}
+    keys = {role: f"this altimeter's variables.{role}" for role in others}
+    for part in ("subtract", "add"):
+        others |= {f"{part} {name}": name for name in getattr(altimeter, part)}
+    others["good"] = altimeter.good.variable if altimeter.good else None
+    return wanted + [
+        Wanted(role, name, (), "", keys.get(role, f"this altimeter's {role.split()[0]}"))
+        for role, name in others.items()
+        if name is not None
+    ]
+
+
+class _Source:
+    """An open file: the variable of each role, read as flat series."""
+
+    def __init__(self, file: netCDF4.Dataset, altimeter: Altimeter) -> None:
+        self._where = file.filepath()
+        located = {
+            w.role: find_variable(file, w.role, w.given, w.standard_names, w.key, w.axis)
+            for w in wanted_variables(altimeter)
+        }
+        self.names = {role: name for role, (name, _) in located.items()}
+        self._variables = {role: variable for role, (_, variable) in located.items()}
+        self.layout = layout_of(file, self._variables)
+
+    def numbers(self, role: str) -> Floats:
+        """Read a variable as it is."""
+        variable = self._variables[role]
+        return self.layout.flat(variable, floats(variable))
+
+    def read(self, role: str, units: str) -> Floats:
+        """Read a variable in the units wanted."""
+        variable = self._variables[role]
+        return self.layout.flat(variable, in_units(variable, self._where, units))
+
+    def time(self) -> Floats:
+        """Read the times, offsets added, that can be believed; NaN for the others."""
+        variable = self._variables["time"]
+        time = self.layout.flat(variable, seconds_since_1970(variable, self._where))
+        if "time_offset" in self._variables:
+            time = time + self.read("time_offset", "s")
+        return _believable(time)
 
 
 def _believable(time: Floats) -> Floats:
@@ -202,8 +248,5 @@ def _flagged(flag: Floats, good: GoodValues) -> NDArray[np.bool_]:
     return np.asarray(~(sound & np.isin(bits, good.values or ())))
 
 
-def _whole_numbers(variable: Any) -> NDArray[np.int64] | None:
-    if variable is None:
-        return None
-    values = floats(variable)
+def _whole_numbers(values: Floats) -> NDArray[np.int64] | None:
     return values.astype(np.int64) if np.all(np.isfinite(values)) else None

@@ -117,6 +117,9 @@ class VariableNames(Section):
     """Names of variables in files that carry no CF standard names; those left out are found by standard name."""
 
     time: str | None = Field(default=None, description="name of the variable that holds the time")
+    time_offset: str | None = Field(
+        default=None, description="the same for a time to add to the first, where that is one for a whole record"
+    )
     latitude: str | None = Field(default=None, description="the same for latitude")
     longitude: str | None = Field(default=None, description="the same for longitude")
     sea_level_anomaly: str | None = Field(default=None, description="the same for the sea level anomaly")
