@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime as dt
+import os
 from collections.abc import Callable
 from pathlib import Path
 from typing import Any
@@ -13,7 +14,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from setdrift.data.configuration import Configuration
-from setdrift.data.digests import digest, file_digest
+from setdrift.data.digests import digest, file_digest, file_mark
 
 VALUES = st.recursive(
     st.none() | st.integers() | st.floats(allow_nan=False) | st.text(),
@@ -76,3 +77,22 @@ def test_file_digest_is_of_the_bytes_alone(tmp_path: Path) -> None:
     assert file_digest(tmp_path / "a") == file_digest(tmp_path / "b")
     (tmp_path / "b").write_bytes(content[:-1] + b"x")
     assert file_digest(tmp_path / "a") != file_digest(tmp_path / "b")
+
+
+def test_folders_count_with_names_sizes_bytes_and_marks_with_times(tmp_path: Path) -> None:
+    def folder(name: str, **contents: str) -> Path:
+        for part, content in contents.items():
+            path = tmp_path / name / "c" / part
+            path.parent.mkdir(parents=True, exist_ok=True)
+            path.write_text(content)
+        return tmp_path / name
+
+    one = folder("a", x="1", y="23")
+    assert file_digest(one) == file_digest(folder("b", y="23", x="1"))
+    others = [folder("c", x="12", y="3"), folder("d", x="1", z="23"), folder("e", x="1", y="24"), folder("f", x="1")]
+    assert len({file_digest(path) for path in (one, *others)}) == 5
+    before, content = file_mark(one), file_digest(one)
+    assert file_mark(one) == before
+    os.utime(one / "c" / "x", (2e9, 2e9))
+    assert file_mark(one) != before
+    assert file_digest(one) == content

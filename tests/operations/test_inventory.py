@@ -12,12 +12,13 @@ from typing import Any
 
 import numpy as np
 import pytest
+import xarray as xr
 from altimeter_files import seconds, write_land, write_mean, write_plain
 
 from setdrift.data.configuration import Configuration
 from setdrift.errors import SetdriftError
 from setdrift.operations import inventory
-from setdrift.operations.inventory import take_inventory
+from setdrift.operations.inventory import matching_files, take_inventory
 
 Configure = Callable[..., Configuration]
 
@@ -234,3 +235,31 @@ def test_folders_below_and_brackets_in_names(sea: Path, configure: Configure) ->
     write_plain(deep / "a.nc", start=seconds(dt.date(2031, 3, 1)))
     taken = take_inventory(configure(altimeters__heron__files="odd [[]1]/**/*.nc"), silent)
     assert taken.counts["used"] == 1
+
+
+@pytest.mark.parametrize("pattern", ["heron/*", "heron/**/*", "heron/*.zarr"])
+def test_zarr_stores_are_files_and_their_objects_are_none(sea: Path, configure: Configure, pattern: str) -> None:
+    whole = (sea / "heron" / "2031-03-02.nc").rename(sea / "whole.nc")
+    with xr.open_dataset(whole, decode_cf=False) as data:
+        data.to_zarr(sea / "heron" / "a.zarr", zarr_format=3, consolidated=False)
+        data.to_zarr(sea / "heron" / "a.folder", zarr_format=3, consolidated=False)
+    configuration = configure(altimeters__heron__files=pattern)
+    files = matching_files(configuration, configuration.altimeters["heron"])
+    names = [path.name for path in files if "a.folder" not in path.parts]
+    assert names == sorted([path.name for path in (sea / "heron").glob("*.nc") if pattern[-1] == "*"] + ["a.zarr"])
+    assert sea / "heron" / "a.folder" not in files
+
+
+def test_a_changed_object_makes_a_store_new(sea: Path, configure: Configure) -> None:
+    with xr.open_dataset(sea / "heron" / "2031-03-02.nc", decode_cf=False) as data:
+        data.to_zarr(sea / "heron" / "a.zarr", zarr_format=3, consolidated=False)
+    configuration = configure(altimeters__heron__files="heron/*.zarr")
+    assert take_inventory(configuration, silent).counts["used"] == 1
+    assert take_inventory(configuration, silent).counts["examined"] == 0
+    before = marks(configuration)
+    os.utime(sea / "heron" / "a.zarr" / "level" / "c" / "0", (2e9, 2e9))
+    assert take_inventory(configuration, silent).counts["examined"] == 1
+    assert marks(configuration) == before
+    (sea / "heron" / "a.zarr" / "note").write_text("more")
+    assert take_inventory(configuration, silent).counts["examined"] == 1
+    assert marks(configuration) != before

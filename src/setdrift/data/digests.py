@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import json
+import os
 from pathlib import Path
 from typing import Any
 
@@ -38,12 +39,12 @@ def digest(*parts: Any) -> str:
 
 
 def file_digest(path: Path) -> str:
-    """Return the digest of a file's bytes.
+    """Return the digest of a file's bytes, or of the names, sizes and bytes of all files in a folder.
 
     Parameters
     ----------
     path : Path
-        The file.
+        The file or folder.
 
     Returns
     -------
@@ -51,10 +52,44 @@ def file_digest(path: Path) -> str:
         Hexadecimal digest.
     """
     state = hashlib.blake2b(digest_size=LENGTH // 2)
-    with path.open("rb") as stream:
-        while piece := stream.read(1 << 20):
-            state.update(piece)
+    for part in _files(path):
+        if part != path:
+            state.update(json.dumps([str(part.relative_to(path)), part.stat().st_size]).encode())
+        with part.open("rb") as stream:
+            while piece := stream.read(1 << 20):
+                state.update(piece)
     return state.hexdigest()
+
+
+def file_mark(path: Path) -> list[Any]:
+    """Return what tells, without opening it, that a file or folder changed: sizes and times of modification.
+
+    Parameters
+    ----------
+    path : Path
+        The file or folder.
+
+    Returns
+    -------
+    list
+        Size in bytes and time; of a folder the number of files, and the digest of theirs and their names.
+    """
+    if not path.is_dir():
+        status = path.stat()
+        return [status.st_size, status.st_mtime_ns]
+    parts = [(str(part.relative_to(path)), part.stat()) for part in _files(path)]
+    return [len(parts), digest([[name, status.st_size, status.st_mtime_ns] for name, status in parts])]
+
+
+def _files(path: Path) -> list[Path]:
+    """Return all files of a folder in the order of their paths; a file is the only one of its own."""
+    if not path.is_dir():
+        return [path]
+
+    def refuse(error: OSError) -> None:
+        raise error
+
+    return sorted(Path(folder, name) for folder, _, names in os.walk(path, onerror=refuse) for name in names)
 
 
 def _plain(value: Any) -> Any:

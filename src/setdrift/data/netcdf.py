@@ -1,4 +1,4 @@
-"""Reading foreign NetCDF files: every way a file can be wrong ends in one error that names the file."""
+"""Reading foreign NetCDF files and Zarr stores: every way a file can be wrong ends in one error that names the file."""
 
 from __future__ import annotations
 
@@ -14,6 +14,7 @@ import netCDF4
 import numpy as np
 from numpy.typing import NDArray
 
+from setdrift.data.zarr_files import is_store, open_store
 from setdrift.errors import SetdriftError
 
 Floats = NDArray[np.float64]
@@ -35,8 +36,8 @@ LONGEST_TIME_UNIT_S = 7 * 86400.0  # months and years have no fixed length
 
 
 @contextlib.contextmanager
-def opened(path: Path) -> Iterator[netCDF4.Dataset]:
-    """Open a file, and turn whatever its reading raises into a SetdriftError.
+def opened(path: Path) -> Iterator[Any]:
+    """Open a file, or a folder that is a Zarr store, and turn whatever its reading raises into a SetdriftError.
 
     Parameters
     ----------
@@ -45,7 +46,7 @@ def opened(path: Path) -> Iterator[netCDF4.Dataset]:
 
     Yields
     ------
-    netCDF4.Dataset
+    netCDF4.Dataset or ZarrFile
         The open file, with automatic masking and unpacking.
 
     Raises
@@ -53,16 +54,20 @@ def opened(path: Path) -> Iterator[netCDF4.Dataset]:
     SetdriftError
         The file cannot be opened, or what is read from it inside the block cannot be read.
     """
+    kind = "Zarr" if is_store(path) else "NetCDF"
     try:
         with warnings.catch_warnings():
             # odd attributes (a valid_min of another type, say) are not worth a line in the log for every file
             warnings.simplefilter("ignore")
+            if kind == "Zarr":
+                yield open_store(path)
+                return
             with netCDF4.Dataset(path) as file:
                 yield file
     except UNREADABLE as error:
         reason = (getattr(error, "strerror", None) or str(error) or type(error).__name__).splitlines()[0]
         raise SetdriftError(
-            str(path), f"cannot be read as NetCDF ({reason})", "replace the file or move it away"
+            str(path), f"cannot be read as {kind} ({reason})", "replace the file or move it away"
         ) from error
 
 
@@ -85,7 +90,7 @@ def variables(group: Any, prefix: str = "") -> dict[str, Any]:
 
 def attribute(variable: Any, name: str) -> str | None:
     """Return a variable's attribute if it is text that says something."""
-    value = getattr(variable, name, None)
+    value = variable.getncattr(name) if name in variable.ncattrs() else None
     return value.strip() if isinstance(value, str) and value.strip() else None
 
 

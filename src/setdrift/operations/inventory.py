@@ -19,9 +19,10 @@ from setdrift.data.algorithms import VERSIONS
 from setdrift.data.alongtrack import read_time_span
 from setdrift.data.configuration import Altimeter, Configuration
 from setdrift.data.days import Block, blocks_between, days_between
-from setdrift.data.digests import digest, file_digest
+from setdrift.data.digests import digest, file_digest, file_mark
 from setdrift.data.netcdf import is_passing_trouble
 from setdrift.data.records import read_record, write_record_if_changed
+from setdrift.data.zarr_files import is_store
 from setdrift.errors import SetdriftError
 
 Announce = Callable[[str], None]
@@ -132,8 +133,7 @@ class _Scan:
     def examine(self, key: str, path: Path, look: Callable[[Path], dict[str, Any]]) -> dict[str, Any]:
         """Return what a look at a file told; a new look is taken only if the file changed."""
         # what the disk refuses is looked at again every time; what is wrong with the content is remembered
-        status = path.stat()
-        mark = [status.st_size, status.st_mtime_ns]
+        mark = file_mark(path)
         known = self._before.get(f"{key} {path}")
         if not isinstance(known, dict) or known.get("mark") != mark:
             known = {"mark": mark, "digest": file_digest(path), **look(path)}
@@ -162,7 +162,7 @@ def _accepted(configuration: Configuration, scan: _Scan, announce: Announce) -> 
 
 
 def matching_files(configuration: Configuration, altimeter: Altimeter) -> list[Path]:
-    """Return an altimeter's files in the order of their paths; folders and hidden files do not count.
+    """Return an altimeter's files in the order of their paths; folders but Zarr stores, and hidden files, do not count.
 
     Parameters
     ----------
@@ -174,12 +174,15 @@ def matching_files(configuration: Configuration, altimeter: Altimeter) -> list[P
     Returns
     -------
     list of Path
-        Regular files that match the pattern.
+        Regular files and folders ending in .zarr that match the pattern; what such folders hold does not count.
     """
     # relative to the folder, so that a bracket in the folder's own name is no pattern
     pattern = str(Path(altimeter.files).expanduser())
     names = glob.glob(pattern, root_dir=configuration.path.parent, recursive=True)  # noqa: PTH207 - pathlib's takes no ..
-    return sorted(path for path in {configuration.resolve(name) for name in names} if _is_regular(path))
+    paths = {configuration.resolve(name) for name in names}
+    stores = {path for path in paths if is_store(path)}
+    files = (path for path in paths if _is_regular(path) and not stores.intersection(path.parents))
+    return sorted([*files, *(path for path in stores if not stores.intersection(path.parents))])
 
 
 def _is_regular(path: Path) -> bool:
