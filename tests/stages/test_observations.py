@@ -244,6 +244,25 @@ def test_file_that_fails_when_read_is_set_aside(sea: Path, configure: Configure)
     assert gather(configuration)["2031-03-01"]["kept"] == 40
 
 
+def test_file_in_the_wrong_unit_is_set_aside(sea: Path, configure: Configure) -> None:
+    path = sea / "heron" / "2031-03-01.nc"
+    level = 0.1 * np.sin(np.arange(60) / 9.0)
+    start = seconds(dt.date(2031, 3, 1)) + 3600.0
+    write_plain(path, 60, start, level=1000.0 * level)
+    told: list[str] = []
+    configuration = configure()
+    for block in take_inventory(configuration, silent).observation_blocks:
+        gather_observations(configuration, block, told.append)
+    assert sum("millimetres for metres" in line for line in told) == 1
+    days = gather(configuration)
+    assert days["2031-03-01"]["kept"] == 0
+    assert "robust spread" in days["2031-03-01"]["set_aside"][0]["reason"]
+    assert days["2031-03-02"]["kept"] == 40
+    write_plain(path, 60, start, level=level)
+    assert rewritten(configuration) == {"2031-03-01"}
+    assert gather(configuration)["2031-03-01"]["kept"] == 60
+
+
 @pytest.mark.parametrize("happening", ["changes", "vanishes"])
 def test_file_that_changes_under_way_is_made_good_next_time(sea: Path, configure: Configure, happening: str) -> None:
     configuration = configure()

@@ -172,6 +172,9 @@ class Editing(Section):
     """Limits of the tests that set observations aside."""
 
     largest_anomaly_m: Positive = Field(default=2.0, description="gross limit of the anomaly's magnitude")
+    largest_spread_m: Positive = Field(
+        default=2.0, description="a file whose sea level spreads more, robustly, is set aside as a whole"
+    )
     spike_window: int = Field(default=9, ge=5, le=101, description="points of the running median")
     spike_limit: Positive = Field(default=5.0, description="robust standard deviations from the running median")
     spike_floor_m: Positive = Field(default=0.10, description="departures below this are never spikes")

@@ -24,6 +24,7 @@ from setdrift.data.digests import digest, file_digest
 from setdrift.data.editing import REASONS, Edited, edit
 from setdrift.data.grids import observation_area
 from setdrift.data.netcdf import is_passing_trouble
+from setdrift.data.plausibility import check_scale
 from setdrift.data.receipts import receipt_path
 from setdrift.data.records import read_record, write_record
 from setdrift.errors import SetdriftError
@@ -162,6 +163,7 @@ class _Gatherer:
         if found != entry["digest"]:
             raise SetdriftError(str(path), "changed since the inventory was taken", "run the workflow again")
         track = read_alongtrack(path, self._configuration.altimeters[entry["altimeter"]])
+        check_scale(path, track, self._configuration.editing, self._land)
         first, last = (day_number(day) * DAY_S for day in (self._days[0], self._days[-1] + dt.timedelta(days=1)))
         return track.select(np.isnan(track.time) | ((track.time >= first) & (track.time < last)))
 
