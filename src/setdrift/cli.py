@@ -53,6 +53,12 @@ def _parser() -> argparse.ArgumentParser:
     check.add_argument("config", type=Path, help="configuration file")
     check.set_defaults(action=_check)
 
+    look = commands.add_parser("look-at", help="say what would be read from one along-track file, and how")
+    look.add_argument("file", type=Path, help="along-track file or Zarr store")
+    look.add_argument("--config", type=Path, help="configuration file whose rules are used; with --altimeter")
+    look.add_argument("--altimeter", help="name of the altimeter in that configuration")
+    look.set_defaults(action=_look)
+
     job = commands.add_parser("job", help="run one rule of the workflow (the workflow calls this)")
     job.add_argument("rule", help="name of the rule")
     job.add_argument("config", type=Path, help="configuration file")
@@ -84,6 +90,15 @@ def _check(chosen: argparse.Namespace) -> None:
         print(f"  altimeter   {name}: {configuration.resolve(altimeter.files)}")
     print(f"  products    {configuration.products}")
     print(f"next: snakemake --cores 2 --configfile {chosen.config}")
+
+
+def _look(chosen: argparse.Namespace) -> None:
+    from setdrift.data.configuration import load_configuration
+    from setdrift.operations.look import look_lines
+
+    configuration = load_configuration(chosen.config) if chosen.config else None
+    for line in look_lines(chosen.file, configuration, chosen.altimeter):
+        print(line)
 
 
 def _job(chosen: argparse.Namespace) -> None:
