@@ -109,7 +109,7 @@ def test_receipts_add_up(sea: Path, configure: Configure) -> None:
         assert receipt["in"] == receipt["kept"] + sum(receipt["dropped"].values())
         assert set(receipt["dropped"]) == set(REASONS)
         assert receipt["dropped"]["flagged"] == 5
-        assert receipt["altimeters"]["heron"] == {"in": 40, "kept": 40, "dropped": {}}
+        assert receipt["altimeters"]["heron"] == {"in": 40, "kept": 40, "dropped": {}, "noise": None}
         assert receipt["files"] == 2
     written = json.loads((configuration.work / "observations" / "2031-02-28.json").read_text())
     assert written["days"]["2031-03-01"] == days["2031-03-01"]
@@ -242,6 +242,30 @@ def test_file_that_fails_when_read_is_set_aside(sea: Path, configure: Configure)
     with netCDF4.Dataset(path, "a") as file:
         file["level"].units = "m"
     assert gather(configuration)["2031-03-01"]["kept"] == 40
+
+
+def test_noise_is_estimated_and_compared(sea: Path, configure: Configure) -> None:
+    rng = np.random.default_rng(3)
+    for n in range(7):
+        day = FIRST + dt.timedelta(days=n)
+        level = 0.1 * np.sin(np.arange(150) / 20.0) + 0.02 * rng.standard_normal(150)
+        north = 8.0 + 0.02 * np.arange(150)
+        start = seconds(day) + 3600.0
+        write_plain(sea / "heron" / f"{day}.nc", 150, start, level=level, y=north, x=np.full(150, -28.0))
+    days = gather(configure())
+    entry = days["2031-03-01"]["altimeters"]["heron"]["noise"]
+    assert entry["differences"] == 147
+    assert entry["standard_deviation_m"] == pytest.approx(0.02, rel=0.4)
+    # the estimates of one block, of two days, within four of their standard errors
+    for noise_m, warned in ((0.02, False), (0.05, True), (0.009, True)):
+        told: list[str] = []
+        configuration = configure(altimeters__heron__noise_m=noise_m)
+        block = take_inventory(configuration, silent).observation_blocks[1]
+        receipt = gather_observations(configuration, block, told.append)
+        assert receipt["noise"]["heron"]["differences"] == 294
+        assert receipt["noise"]["heron"]["standard_deviation_m"] == pytest.approx(0.02, rel=0.36)
+        lines = [line for line in told if line.startswith("warning: altimeter heron: noise_m is")]
+        assert len(lines) == warned
 
 
 def test_file_in_the_wrong_unit_is_set_aside(sea: Path, configure: Configure) -> None:

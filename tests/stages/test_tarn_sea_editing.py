@@ -13,6 +13,7 @@ from setdrift.data.ancillary import LandMask
 from setdrift.data.configuration import load_configuration
 from setdrift.data.editing import Edited, edit
 from setdrift.data.grids import observation_area
+from setdrift.numerics.along_pass_noise import estimate_noise, pooled_noise
 from synthetic_tracks import dialects, ocean, sampling, scenario
 
 CONFIGURATION = load_configuration(Path(__file__).parents[2] / "config" / "tarn_sea.yaml")
@@ -64,6 +65,27 @@ def test_spikes_go_and_good_points_stay(
     true_pass = points.cycle[order] * 10000 + points.pass_number[order]
     found = result.track.pass_number
     assert len(set(zip(true_pass, found, strict=True))) == len(set(true_pass)) == len(set(found))
+
+
+@pytest.mark.parametrize("name", list(CONFIGURATION.altimeters))
+def test_noise_is_estimated_within_a_tenth(
+    sea: tuple[scenario.Scenario, ocean.Ocean], tmp_path: Path, name: str
+) -> None:
+    chosen, truth = sea
+    altimeter = next(a for a in chosen.altimeters if a.name == name)
+    estimates = []
+    for day in [*DAYS, dt.date(2031, 3, 17)]:
+        path = tmp_path / f"{day}.nc"
+        dialects.write(path, altimeter, day, sampling.observe(chosen, truth, altimeter, day))
+        track = read_alongtrack(path, CONFIGURATION.altimeters[name])
+        kept = edit(track, CONFIGURATION.editing, land_of(chosen, truth), AREA).track
+        assert kept.pass_number is not None
+        found = estimate_noise(kept.time, kept.sea_level_anomaly, kept.pass_number)
+        assert found is not None
+        estimates.append(found)
+    pooled = pooled_noise(estimates)
+    assert pooled is not None
+    assert pooled.standard_deviation == pytest.approx(altimeter.noise_m, rel=0.1)
 
 
 def matched(result: Edited, points: sampling.Observations) -> tuple[np.ndarray, np.ndarray]:

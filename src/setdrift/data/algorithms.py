@@ -14,7 +14,7 @@ from setdrift.data.digests import digest
 from setdrift.data.grids import Grid, analysis_grid, observation_area, working_grid
 
 VERSIONS = {
-    "observations": 3,
+    "observations": 4,
     "fixed": 1,
     "maps": 1,
     "dynamic_topography": 1,

@@ -28,6 +28,10 @@ from setdrift.data.plausibility import check_scale
 from setdrift.data.receipts import receipt_path
 from setdrift.data.records import read_record, write_record
 from setdrift.errors import SetdriftError
+from setdrift.numerics.along_pass_noise import NoiseEstimate, estimate_noise, pooled_noise
+
+NOISE_MISFIT = 0.3
+"""A configured noise that differs from the estimate by more than this share is warned of."""
 
 Entry = dict[str, str]
 
@@ -50,7 +54,8 @@ def gather_observations(configuration: Configuration, block: Block, announce: Ca
     Returns
     -------
     dict
-        The job's receipt: stage, block, days (content digest, counts) and files set aside.
+        The job's receipt: stage, block, days (content digest, counts), white noise estimated for each altimeter,
+        and files set aside.
     """
     manifest = read_record(configuration.work / "manifests" / f"{block.label}.json")
     fixed = read_record(configuration.work / "manifests" / "fixed.json")
@@ -59,15 +64,48 @@ def gather_observations(configuration: Configuration, block: Block, announce: Ca
     store = DayStore(configuration.work / "observations")
     contents = refresh_days(store, days, gatherer.made_from, gatherer.make, announce)
     receipts = {day.isoformat(): json.loads(store.attribute(day, "receipt") or "{}") for day in days}
+    noise = _noise_of_days(list(receipts.values()))
+    _compare_noise(configuration, block, noise, announce)
     set_aside = {entry["path"]: entry for receipt in receipts.values() for entry in receipt["set_aside"]}
     receipt = {
         "stage": "observations",
         "block": block.label,
         "days": {day: {"content": contents[day], **receipts[day]} for day in contents},
+        "noise": {name: _noise_entry(estimate) for name, estimate in noise.items()},
         "set_aside": list(set_aside.values()),
     }
     write_record(receipt_path(configuration, "observations", block), receipt)
     return receipt
+
+
+def _noise_of_days(receipts: list[dict[str, Any]]) -> dict[str, NoiseEstimate]:
+    """Return the white noise of each altimeter that has estimates."""
+    found: dict[str, list[NoiseEstimate]] = {}
+    for receipt in receipts:
+        for name, counts in receipt["altimeters"].items():
+            if counts["noise"]:
+                estimate = NoiseEstimate(counts["noise"]["standard_deviation_m"], counts["noise"]["differences"])
+                found.setdefault(name, []).append(estimate)
+    return {name: pooled for name in sorted(found) if (pooled := pooled_noise(found[name]))}
+
+
+def _compare_noise(
+    configuration: Configuration, block: Block, noise: dict[str, NoiseEstimate], announce: Callable[[str], None]
+) -> None:
+    for name, estimate in noise.items():
+        configured = configuration.altimeters[name].noise_m
+        if abs(estimate.standard_deviation / configured - 1.0) > NOISE_MISFIT:
+            announce(
+                f"warning: altimeter {name}: noise_m is {configured:g}, but in block {block.label} its observations "
+                f"scatter by {estimate.standard_deviation:.4f} m; set noise_m nearer to that"
+            )
+
+
+def _noise_entry(estimate: NoiseEstimate | None) -> dict[str, Any] | None:
+    # rounded, so that no machine's last digits make another receipt
+    if estimate is None:
+        return None
+    return {"standard_deviation_m": round(estimate.standard_deviation, 6), "differences": estimate.differences}
 
 
 class _Gatherer:
@@ -176,9 +214,14 @@ def _of_day(track: AlongTrack, day: dt.date, entry: Entry) -> AlongTrack:
 
 
 def _counts(edited: dict[str, Edited]) -> dict[str, Any]:
-    """Return how many observations came in, stayed and were dropped, in all and by altimeter."""
+    """Return how many observations came in, stayed and were dropped, in all and by altimeter, with its noise."""
     altimeters = {
-        name: {"in": e.received, "kept": len(e.track), "dropped": {r: n for r, n in e.dropped.items() if n}}
+        name: {
+            "in": e.received,
+            "kept": len(e.track),
+            "dropped": {r: n for r, n in e.dropped.items() if n},
+            "noise": _noise_entry(_noise(e.track)),
+        }
         for name, e in edited.items()
     }
     return {
@@ -187,6 +230,11 @@ def _counts(edited: dict[str, Edited]) -> dict[str, Any]:
         "dropped": {reason: sum(e.dropped[reason] for e in edited.values()) for reason in REASONS},
         "altimeters": altimeters,
     }
+
+
+def _noise(track: AlongTrack) -> NoiseEstimate | None:
+    assert track.pass_number is not None
+    return estimate_noise(track.time, track.sea_level_anomaly, track.pass_number)
 
 
 def _dataset(edited: dict[str, Edited], names: list[str], receipt: dict[str, Any]) -> xr.Dataset:
