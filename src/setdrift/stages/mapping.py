@@ -61,7 +61,6 @@ class _Mapper:
     def __init__(self, configuration: Configuration, grid: Grid) -> None:
         self._configuration = configuration
         self._grid = grid
-        self._store = DayStore(configuration.work / "observations")
         self._loaded: dict[dt.date, SeaLevelObservations] = {}
         self._settings = mapping_settings(configuration)
         self._sea: np.ndarray[Any, np.dtype[np.bool_]] | None = None
@@ -89,24 +88,44 @@ class _Mapper:
     def _window(self, day: dt.date) -> SeaLevelObservations:
         window = dt.timedelta(days=self._configuration.mapping.window_days)
         wanted = days_between(day - window, day + window)
-        self._loaded = {d: self._loaded.get(d) or self._load(d) for d in wanted}
+        self._loaded = {d: self._loaded.get(d) or load_observations(self._configuration, d) for d in wanted}
         return SeaLevelObservations.joined(list(self._loaded.values()))
 
-    def _load(self, day: dt.date) -> SeaLevelObservations:
-        data = self._store.load(day)
-        names = data.attrs["altimeters"].split()
-        noise = np.array([self._configuration.altimeters[name].noise_m for name in names])
-        altimeter = data["altimeter"].values.astype(np.int64)
-        return SeaLevelObservations(
-            data["longitude"].values,
-            data["latitude"].values,
-            data["time"].values / 86400.0,
-            data["sea_level_anomaly"].values,
-            noise[altimeter] ** 2,
-            altimeter,
-            data["pass_number"].values.astype(np.int64),
-            np.ones(altimeter.size, dtype=np.int64),
-        )
+
+def load_observations(configuration: Configuration, day: dt.date) -> SeaLevelObservations:
+    """Return a gathered day's observations of all altimeters.
+
+    Parameters
+    ----------
+    configuration : Configuration
+        The analysis.
+    day : date
+        The day.
+
+    Returns
+    -------
+    SeaLevelObservations
+        Altimeters are numbered in the configuration's order.
+
+    Raises
+    ------
+    SetdriftError
+        There is no sound file for the day.
+    """
+    data = DayStore(configuration.work / "observations").load(day)
+    names = data.attrs["altimeters"].split()
+    noise = np.array([configuration.altimeters[name].noise_m for name in names])
+    altimeter = data["altimeter"].values.astype(np.int64)
+    return SeaLevelObservations(
+        data["longitude"].values,
+        data["latitude"].values,
+        data["time"].values / 86400.0,
+        data["sea_level_anomaly"].values,
+        noise[altimeter] ** 2,
+        altimeter,
+        data["pass_number"].values.astype(np.int64),
+        np.ones(altimeter.size, dtype=np.int64),
+    )
 
 
 def mapping_settings(configuration: Configuration) -> MappingSettings:
