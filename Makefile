@@ -19,7 +19,7 @@ help:
 	@echo "make demo    set up, invent the Tarn Sea's observations, run the whole pipeline, compare with the truth"
 	@echo "make test    set up and run the tests"
 	@echo "make check   lint, types, layers and workflow format"
-	@echo "make bench   time and score the mapping against references"
+	@echo "make bench   time and score the mapping, and time the reading, against references"
 	@echo "make docs    regenerate the generated parts of the documentation (after make demo)"
 	@echo "make setup   only set up .venv"
 	@echo "make clean   remove what make demo made (not .venv)"

@@ -112,6 +112,18 @@ def test_editing_is_counted_and_rules_are_kept(tmp_path: Path, configured: Confi
     assert proposed(lines)[1].good == configured.altimeters["heron"].good
 
 
+def test_a_file_in_another_unit_would_be_set_aside(tmp_path: Path, configured: Configuration) -> None:
+    columns: dict[str, Any] = plain_columns(400)
+    columns["y"] = (8.0 + 0.005 * np.arange(400), columns["y"][1])
+    columns["x"] = (-28.0 + 0.001 * np.arange(400), columns["x"][1])
+    columns["fit"] = (np.zeros(400, np.int8), {})
+    sound = look_lines(write(tmp_path / "a.nc", columns), configured, "heron")
+    assert not any("set aside" in line for line in sound)
+    columns["level"] = (1000.0 * columns["level"][0], columns["level"][1])
+    lines = look_lines(write(tmp_path / "b.nc", columns), configured, "heron")
+    assert sum("would be set aside: has sea level with a robust spread of" in line for line in lines) == 1
+
+
 def test_times_of_records_want_offsets(tmp_path: Path) -> None:
     with netCDF4.Dataset(tmp_path / "a.nc", "w") as file:
         file.createDimension("record", 4)

@@ -19,6 +19,7 @@ from setdrift.data.configuration import Altimeter, Configuration
 from setdrift.data.editing import edit
 from setdrift.data.grids import observation_area
 from setdrift.data.netcdf import attribute, find_variable, opened, variables
+from setdrift.data.plausibility import check_scale
 from setdrift.errors import SetdriftError
 from setdrift.numerics.earth import metres_per_degree
 from setdrift.operations.look_snippet import flag_lines, one_line, snippet_lines
@@ -80,7 +81,7 @@ def look_lines(path: Path, configuration: Configuration | None = None, name: str
     else:
         lines += [f"  {line}" for line in _contents(track)]
         if configuration is not None:
-            lines += _edited(track, configuration)
+            lines += _edited(path, track, configuration)
     return [*lines, "", "in a configuration", *snippet]
 
 
@@ -167,8 +168,12 @@ def _spacing(track: AlongTrack) -> tuple[float, float] | None:
     )
 
 
-def _edited(track: AlongTrack, configuration: Configuration) -> list[str]:
-    area = observation_area(configuration)
-    edited = edit(track, configuration.editing, land_mask(configuration), area, sea_floor(configuration))
-    lines = ["", "editing", f"  {'kept':<18} {len(edited.track)} of {edited.received}"]
+def _edited(path: Path, track: AlongTrack, configuration: Configuration) -> list[str]:
+    land, lines = land_mask(configuration), ["", "editing"]
+    try:
+        check_scale(path, track, configuration.editing, land)
+    except SetdriftError as error:
+        lines.append(f"  would be set aside: {one_line(f'{error.what}; {error.remedy}')}")
+    edited = edit(track, configuration.editing, land, observation_area(configuration), sea_floor(configuration))
+    lines.append(f"  {'kept':<18} {len(edited.track)} of {edited.received}")
     return lines + [f"  {reason:<18} {count}" for reason, count in edited.dropped.items() if count]
