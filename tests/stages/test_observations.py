@@ -268,6 +268,15 @@ def test_noise_is_estimated_and_compared(sea: Path, configure: Configure) -> Non
         assert len(lines) == warned
 
 
+@pytest.mark.parametrize("name", ["land", "depth"])
+def test_a_bad_grid_stops_the_job_and_sets_no_file_aside(sea: Path, configure: Configure, name: str) -> None:
+    configuration = configure(depth={"file": "depth.nc"})
+    write_depth(sea / "depth.nc", np.full((2, 2), 4000.0))
+    (sea / f"{name}.nc").write_text("no grid")
+    with pytest.raises(SetdriftError, match=rf"{name}\.nc: cannot be read"):
+        gather(configuration)
+
+
 def test_file_in_the_wrong_unit_is_set_aside(sea: Path, configure: Configure) -> None:
     path = sea / "heron" / "2031-03-01.nc"
     level = 0.1 * np.sin(np.arange(60) / 9.0)

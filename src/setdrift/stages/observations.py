@@ -181,8 +181,9 @@ class _Gatherer:
         """Return a file's observations of the block, or why there are none."""
         path = entry["path"]
         if path not in self._tracks:
+            land = self._land  # a land mask that cannot be read is no fault of this file
             try:
-                self._tracks[path] = self._read(entry)
+                self._tracks[path] = self._read(entry, land)
             except SetdriftError as error:
                 if is_passing_trouble(error):
                     # set aside, the file would be missed for good: the day's digest says it was read
@@ -191,7 +192,7 @@ class _Gatherer:
                 self._tracks[path] = str(error)
         return self._tracks[path]
 
-    def _read(self, entry: Entry) -> AlongTrack:
+    def _read(self, entry: Entry, land: LandMask) -> AlongTrack:
         path = Path(entry["path"])
         try:
             found = file_digest(path)
@@ -201,7 +202,7 @@ class _Gatherer:
         if found != entry["digest"]:
             raise SetdriftError(str(path), "changed since the inventory was taken", "run the workflow again")
         track = read_alongtrack(path, self._configuration.altimeters[entry["altimeter"]])
-        check_scale(path, track, self._configuration.editing, self._land)
+        check_scale(path, track, self._configuration.editing, land)
         first, last = (day_number(day) * DAY_S for day in (self._days[0], self._days[-1] + dt.timedelta(days=1)))
         return track.select(np.isnan(track.time) | ((track.time >= first) & (track.time < last)))
 
