@@ -147,6 +147,14 @@ def test_a_file_of_something_else_is_told_so(tmp_path: Path) -> None:
     assert proposed(lines)[1].files == str(tmp_path / "*.nc")
 
 
+@pytest.mark.parametrize("kind", ["flag_masks", "flag_values"])
+def test_flags_explained_by_text_are_no_obstacle(tmp_path: Path, kind: str) -> None:
+    columns = plain_columns() | {"fit": (np.zeros(40, np.int8), {kind: "0b, 1b", "flag_meanings": "good bad"})}
+    lines = look_lines(write(tmp_path / "a.nc", columns))
+    assert "  40 records, 0 of them flagged" in lines
+    assert not any("flag  " in line for line in lines)
+
+
 @pytest.mark.parametrize("folder", ["a [b] c", "x: y", "line\nbreak", "{}", "'quoted\""])
 def test_hostile_names_of_folders_are_quoted(tmp_path: Path, folder: str) -> None:
     path = write_plain(tmp_path / folder / "a.nc")

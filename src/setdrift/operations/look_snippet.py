@@ -144,6 +144,8 @@ def _flags(known: Mapping[str, Any]) -> dict[str, tuple[str, str]]:
             if kind not in variable.ncattrs():
                 continue
             numbers = np.atleast_1d(variable.getncattr(kind)).tolist()
+            if not all(isinstance(number, int | float) and float(number).is_integer() for number in numbers):
+                break  # text, say
             said = [*meanings, *["?"] * (len(numbers) - len(meanings))]
             told = ", ".join(f"{key} {n} {m}" for n, m in zip(numbers, said, strict=False))
             # an example only: what is good, the file cannot tell
