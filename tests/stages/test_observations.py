@@ -244,6 +244,14 @@ def test_file_that_fails_when_read_is_set_aside(sea: Path, configure: Configure)
     assert gather(configuration)["2031-03-01"]["kept"] == 40
 
 
+def test_receipt_names_files_that_could_not_be_opened(sea: Path, configure: Configure) -> None:
+    (sea / "heron" / "broken.nc").write_text("not NetCDF")
+    configuration = configure()
+    days = gather(configuration)
+    assert {Path(entry["path"]).name for entry in days["set_aside"]} == {"broken.nc"}
+    assert all("cannot be read" in entry["reason"] for entry in days["set_aside"])
+
+
 def test_noise_is_estimated_and_compared(sea: Path, configure: Configure) -> None:
     rng = np.random.default_rng(3)
     for n in range(7):

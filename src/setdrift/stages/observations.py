@@ -66,7 +66,10 @@ def gather_observations(configuration: Configuration, block: Block, announce: Ca
     receipts = {day.isoformat(): json.loads(store.attribute(day, "receipt") or "{}") for day in days}
     noise = _noise_of_days(list(receipts.values()))
     _compare_noise(configuration, block, noise, announce)
-    set_aside = {entry["path"]: entry for receipt in receipts.values() for entry in receipt["set_aside"]}
+    # files that the inventory could not open belong to no day: every block's receipt names them
+    unopened = read_record(configuration.work / "manifests" / "set_aside.json")
+    refused = [entry for receipt in receipts.values() for entry in receipt["set_aside"]]
+    set_aside = {entry["path"]: entry for entry in [*unopened, *refused]}
     receipt = {
         "stage": "observations",
         "block": block.label,
