@@ -34,7 +34,7 @@ def test_help_imports_nothing_heavy() -> None:
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert done.stdout.startswith("usage: setdrift [-h]")
     assert done.stdout.endswith("heavy: []\n")
-    for command in ("check", "look-at", "job", "verify", "prepare"):
+    for command in ("check", "look-at", "job", "verify", "compare-altimeters", "prepare"):
         assert f"\n    {command}" in done.stdout
 
 

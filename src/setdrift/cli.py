@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import datetime as dt
 import sys
 from collections.abc import Sequence
 from pathlib import Path
@@ -71,9 +72,23 @@ def _parser() -> argparse.ArgumentParser:
     verify.add_argument("--truth", type=Path, required=True, help="gridded file with the true fields, by standard name")
     verify.set_defaults(action=_verify)
 
+    compare = commands.add_parser("compare-altimeters", help="report biases and errors of passes, from crossovers")
+    compare.add_argument("config", type=Path, help="configuration file")
+    compare.add_argument("--from", dest="first", type=_day, metavar="DAY", help="first day to use")
+    compare.add_argument("--to", dest="last", type=_day, metavar="DAY", help="last day to use")
+    compare.add_argument("--truth", type=Path, help="NetCDF file with the true bias (m) by altimeter")
+    compare.set_defaults(action=_compare_altimeters)
+
     prepare = commands.add_parser("prepare", help="compile the fast loops now, so that no first run seems to hang")
     prepare.set_defaults(action=_prepare)
     return parser
+
+
+def _day(text: str) -> dt.date:
+    try:
+        return dt.date.fromisoformat(text)
+    except ValueError as error:
+        raise argparse.ArgumentTypeError(f"{text!r} is not a day; write it as YYYY-MM-DD") from error
 
 
 def _check(chosen: argparse.Namespace) -> None:
@@ -125,6 +140,14 @@ def _verify(chosen: argparse.Namespace) -> None:
     from setdrift.operations.verification import verification_lines
 
     for line in verification_lines(load_configuration(chosen.config), chosen.truth):
+        print(line)
+
+
+def _compare_altimeters(chosen: argparse.Namespace) -> None:
+    from setdrift.data.configuration import load_configuration
+    from setdrift.operations.altimeter_comparison import comparison_lines
+
+    for line in comparison_lines(load_configuration(chosen.config), chosen.first, chosen.last, chosen.truth):
         print(line)
 
 
