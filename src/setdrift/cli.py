@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import argparse
 import datetime as dt
+import os
 import sys
 from collections.abc import Sequence
 from pathlib import Path
@@ -32,6 +33,11 @@ def main(arguments: Sequence[str] | None = None) -> int:
     chosen = _parser().parse_args(arguments)
     try:
         chosen.action(chosen)
+        sys.stdout.flush()
+    except BrokenPipeError:
+        # a reader such as `head` has seen enough; what is still buffered must not fail once more at exit
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return 0
     except SetdriftError as error:
         print(f"setdrift: {error}", file=sys.stderr)
         return FAILED
