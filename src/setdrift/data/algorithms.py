@@ -51,9 +51,7 @@ def settings_digest(configuration: Configuration, stage: str) -> str:
 
 
 def _reading(configuration: Configuration) -> list[Any]:
-    reading = {
-        name: a.model_dump(mode="json", exclude={"files", "noise_m"}) for name, a in configuration.altimeters.items()
-    }
+    reading = {name: altimeter.reading for name, altimeter in configuration.altimeters.items()}
     fields = [(configuration.land or configuration.mean_dynamic_topography).variable]
     fields += [configuration.depth.variable] if configuration.depth else []
     return [reading, configuration.editing, str(observation_area(configuration)), fields]

@@ -160,6 +160,11 @@ class Altimeter(Section):
     good: GoodValues | None = None
     noise_m: Positive = Field(default=0.03, le=1.0, description="white-noise standard deviation of one observation")
 
+    @property
+    def reading(self) -> dict[str, Any]:
+        """The keys that decide what is read from a file: not where it is, nor how far it is trusted."""
+        return self.model_dump(mode="json", exclude={"files", "noise_m"})
+
 
 class Source(Section):
     """A gridded input file, and the variable in it where standard names do not tell."""

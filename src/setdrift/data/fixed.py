@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import numpy as np
 import xarray as xr
+from numpy.typing import ArrayLike, NDArray
 
 from setdrift.data.configuration import Configuration
 from setdrift.data.records import read_record
@@ -38,3 +40,8 @@ def load_fixed_fields(configuration: Configuration) -> xr.Dataset:
 def fixed_digest(configuration: Configuration, name: str) -> str:
     """Return the digest of a fixed field's values."""
     return str(read_record(configuration.work / "fixed" / "fields.json")[name])
+
+
+def is_sea(land_fraction: ArrayLike) -> NDArray[np.bool_]:
+    """Return which cells count as sea: those that are land by less than half."""
+    return np.asarray(land_fraction) < 0.5

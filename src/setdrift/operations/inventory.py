@@ -195,7 +195,7 @@ def _is_regular(path: Path) -> bool:
 def _of_altimeter(
     name: str, altimeter: Altimeter, paths: Iterable[Path], scan: _Scan, announce: Announce
 ) -> list[InputFile]:
-    key = f"{name} {digest(VERSIONS['observations'], altimeter.model_dump(mode='json', exclude={'files', 'noise_m'}))}"
+    key = f"{name} {digest(VERSIONS['observations'], altimeter.reading)}"
     files: dict[str, InputFile] = {}
     for path in paths:
         try:

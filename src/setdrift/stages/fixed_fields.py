@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from setdrift.data.ancillary import LandMask, land_mask, mean_dynamic_topography
 from setdrift.data.configuration import Configuration
 from setdrift.data.day_store import content_digest
+from setdrift.data.fixed import is_sea
 from setdrift.data.grids import Grid, working_grid
 from setdrift.data.records import replacing, write_record
 from setdrift.errors import SetdriftError
@@ -39,7 +40,7 @@ def prepare_fixed_fields(configuration: Configuration, announce: Callable[[str],
     """
     grid = working_grid(configuration)
     land_fraction = _land_fraction(land_mask(configuration), grid)
-    sea = land_fraction < 0.5
+    sea = is_sea(land_fraction)
     if not sea.any():
         raise SetdriftError(f"{configuration.path}: grid", "the box holds no sea", "move the box or change land.file")
     source = mean_dynamic_topography(configuration)

@@ -15,7 +15,7 @@ from setdrift.data.conventions import UNOBSERVED_LIMIT, MapQuality
 from setdrift.data.day_store import DayStore
 from setdrift.data.days import Block, day_number, days_between
 from setdrift.data.digests import digest
-from setdrift.data.fixed import fixed_digest, load_fixed_fields
+from setdrift.data.fixed import fixed_digest, is_sea, load_fixed_fields
 from setdrift.data.grids import Grid, working_grid
 from setdrift.data.receipts import analysed_days, contents_between, refresh_block
 from setdrift.numerics.covariance import CovarianceModel
@@ -67,7 +67,7 @@ class _Mapper:
 
     def map_day(self, day: dt.date) -> xr.Dataset:
         if self._sea is None:
-            self._sea = (load_fixed_fields(self._configuration)["land_fraction"] < 0.5).values
+            self._sea = is_sea(load_fixed_fields(self._configuration)["land_fraction"])
         moment = day_number(day) + NOON
         mapped = map_sea_level(
             self._window(day), self._grid.latitude, self._grid.longitude, self._sea, moment, self._settings

@@ -149,10 +149,7 @@ class _Gatherer:
     def made_from(self, day: dt.date) -> str:
         """Return the digest of all that a day depends on."""
         files = self._touching(day)
-        reading = {
-            name: self._configuration.altimeters[name].model_dump(mode="json", exclude={"files", "noise_m"})
-            for name in {entry["altimeter"] for entry in files}
-        }
+        reading = {name: self._configuration.altimeters[name].reading for name in {e["altimeter"] for e in files}}
         return digest(self._common, day, reading, [[entry["altimeter"], entry["digest"]] for entry in files])
 
     def make(self, day: dt.date) -> xr.Dataset:
